@@ -38,6 +38,8 @@ struct View {
 
   // Pixel at which a point `height_mm` above the paper appears.
   [[nodiscard]] Eigen::Vector2d PixelFromSheet(double x_mm, double y_mm, double height_mm) const;
+  // Its derivative, pixels a millimetre; rows: pixel x, y; columns: by sheet x, y.
+  [[nodiscard]] Eigen::Matrix2d PixelBySheet(double x_mm, double y_mm, double height_mm) const;
   // Local scale at that point: pixels a millimetre, the smaller of the two principal ones.
   [[nodiscard]] double PxPerMm(double x_mm, double y_mm, double height_mm) const;
   // The sheet point `height_mm` above the paper that appears at the pixel (iterative undistortion).

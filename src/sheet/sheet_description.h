@@ -57,7 +57,9 @@ struct SheetDescription {
   double well_floor_reflectance = 1;      // 1: bare paper; below: a gray floor is printed
   std::vector<std::string> unknown_keys;  // of the file, to be reported; not an error
 
+  // Null when there is none.
   [[nodiscard]] const Well* FindWell(std::string_view well_name) const;
+  [[nodiscard]] const SheetMarker* FindMarker(int id) const;
 };
 
 // Problem: malformed, a wrong type, a duplicate marker or well, something outside the page.
@@ -70,6 +72,7 @@ struct SheetDescription {
 [[nodiscard]] const std::vector<SheetDescription>& ShippedSheets();
 
 // `bar_mm`: the scale bar's length as measured on the print. Scales every length on the sheet.
+// Throws BadOption unless it is above 0.
 [[nodiscard]] SheetDescription ScaledByBar(const SheetDescription& sheet, double bar_mm);
 
 }  // namespace laygauge
