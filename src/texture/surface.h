@@ -6,19 +6,15 @@
 
 #include "coupon/coupon_description.h"
 #include "coupon/patch.h"
+#include "texture/field_spectrum.h"
+#include "texture/line_spectrum.h"
 
 namespace laygauge {
-
-// The lines of the top layer, as the spectrum of the field shows them (line_spectrum.h).
-struct Lines {
-  double pitch_mm = 0;
-  double lay_deg = 0;  // counter-clockwise from the coupon's +x seen from above, [0, 180)
-};
 
 // The field turned so that the lines run along the rows: columns are along the lay, rows across it.
 struct AlignedField {
   cv::Mat relative;  // CV_32FC1
-  cv::Mat regions;   // CV_8UC1: Region
+  cv::Mat regions;   // CV_8UC1: Region; kOff beyond the patch
   double px_per_mm = 20;
   cv::Matx23d coupon_from_aligned;  // pixel of this image -> mm in the coupon's frame
 };
@@ -27,10 +23,19 @@ struct AlignedField {
 struct Surface {
   const Patch* patch = nullptr;
   const CouponDescription* coupon = nullptr;
+  FieldSpectrum spectrum;
   std::optional<Lines> lines;  // none: no periodic lines are visible
   std::string no_lines_reason;
   // Turned to `lines`, else to the coupon's nominal lay, else to 0 degrees.
   AlignedField aligned;
 };
+
+// Finds the lines and turns the field. `patch` and `coupon` are kept by address: they must outlive
+// the result.
+[[nodiscard]] Surface MakeSurface(const Patch& patch, const CouponDescription& coupon);
+
+// The field's bounding box of the patch, turned about the coupon's origin so that the direction
+// `lay_deg` lies along the rows. Bicubic between pixels; regions take their nearest pixel.
+[[nodiscard]] AlignedField AlignField(const Patch& patch, double lay_deg);
 
 }  // namespace laygauge

@@ -1,0 +1,42 @@
+#pragma once
+
+#include <opencv2/core.hpp>
+#include <vector>
+
+#include "coupon/patch.h"
+
+namespace laygauge {
+
+struct FieldSpectrumOptions {
+  double tile_mm = 6.4;
+  double max_overlap = 0.25;      // of neighbouring tiles, share of their side
+  double min_field_share = 0.75;  // of a tile's window weight that must lie in the field
+  void Check() const;             // throws BadOption: field, value, rule
+};
+
+// The windowed power spectrum of one square tile of the field.
+struct SpectrumTile {
+  cv::Point corner_px;  // of the patch
+  cv::Mat power;        // CV_32FC1, side x (side / 2 + 1): squared amplitude density, bin (ky, kx)
+};
+
+// Power spectrum of the field: the mean over tiles of squared windowed Fourier transforms of the
+// relative reflectance, the window times the field's mask, the tile's weighted mean removed.
+// Scaled so that the sum over the whole plane of frequencies is the field's variance; columns kx
+// = 0..side/2, rows ky = 0..side-1 (ky > side/2 stands for ky - side).
+struct FieldSpectrum {
+  int side_px = 0;
+  double bin_per_mm = 0;  // width of a bin, cycles per mm
+  std::vector<SpectrumTile> tiles;
+  cv::Mat power;  // CV_32FC1, the mean of the tiles'
+};
+
+// No tiles: the field is smaller than one tile.
+// Source: Welch, "The use of fast Fourier transform for the estimation of power spectra", IEEE
+// Trans. Audio Electroacoust. AU-15 (1967) 70-73, doi:10.1109/TAU.1967.1161901, in two dimensions,
+// with the periodic Hann window (Harris, Proc. IEEE 66 (1978) 51-83, doi:10.1109/PROC.1978.10837).
+// Departure: the window is multiplied by the field's mask, so that tiles may touch its border.
+[[nodiscard]] FieldSpectrum MeasureFieldSpectrum(const Patch& patch,
+                                                 const FieldSpectrumOptions& options = {});
+
+}  // namespace laygauge

@@ -1,0 +1,87 @@
+#include "texture/surface.h"
+
+#include <algorithm>
+#include <cmath>
+#include <numbers>
+#include <opencv2/imgproc.hpp>
+
+namespace laygauge {
+namespace {
+
+// Axis-parallel bounds, in the turned frame about the coupon's origin (pixels), of the field.
+cv::Rect2d TurnedBounds(const cv::Mat& field, cv::Point2d origin_px, cv::Point2d along,
+                        cv::Point2d across) {
+  double low_u = 1e9;
+  double high_u = -1e9;
+  double low_v = 1e9;
+  double high_v = -1e9;
+  for (int y = 0; y < field.rows; ++y) {
+    const auto* row = field.ptr<std::uint8_t>(y);
+    const auto* first = std::find(row, row + field.cols, 255);
+    if (first == row + field.cols) {
+      continue;
+    }
+    const auto* last = row + field.cols - 1;
+    while (*last != 255) {
+      --last;
+    }
+    for (const auto* end : {first, last}) {
+      const cv::Point2d p = cv::Point2d(static_cast<double>(end - row), y) - origin_px;
+      low_u = std::min(low_u, p.dot(along));
+      high_u = std::max(high_u, p.dot(along));
+      low_v = std::min(low_v, p.dot(across));
+      high_v = std::max(high_v, p.dot(across));
+    }
+  }
+  return {low_u, low_v, high_u - low_u, high_v - low_v};
+}
+
+}  // namespace
+
+AlignedField AlignField(const Patch& patch, double lay_deg) {
+  constexpr double kBorderPx = 8;  // room for filters
+  const double lay = lay_deg * std::numbers::pi / 180;
+  const cv::Point2d along(std::cos(lay), -std::sin(lay));
+  const cv::Point2d across(std::sin(lay), std::cos(lay));
+  const cv::Mat field = patch.regions == static_cast<int>(Region::kField);
+  AlignedField aligned;
+  aligned.px_per_mm = patch.px_per_mm;
+  if (cv::countNonZero(field) == 0) {
+    return aligned;
+  }
+  const cv::Rect2d bounds = TurnedBounds(field, patch.origin_px, along, across);
+  const double u0 = std::floor(bounds.x - kBorderPx);
+  const double v0 = std::floor(bounds.y - kBorderPx);
+  const cv::Size size(static_cast<int>(bounds.width + 2 * kBorderPx) + 2,
+                      static_cast<int>(bounds.height + 2 * kBorderPx) + 2);
+  const cv::Point2d start = along * u0 + across * v0;
+  const cv::Matx23d patch_from_aligned(along.x, across.x, start.x + patch.origin_px.x,  //
+                                       along.y, across.y, start.y + patch.origin_px.y);
+  cv::warpAffine(patch.relative, aligned.relative, patch_from_aligned, size,
+                 cv::INTER_CUBIC | cv::WARP_INVERSE_MAP, cv::BORDER_REPLICATE);
+  cv::warpAffine(patch.regions, aligned.regions, patch_from_aligned, size,
+                 cv::INTER_NEAREST | cv::WARP_INVERSE_MAP, cv::BORDER_CONSTANT,
+                 cv::Scalar::all(static_cast<int>(Region::kOff)));
+  const double mm = 1 / patch.px_per_mm;
+  aligned.coupon_from_aligned = {along.x * mm, across.x * mm, start.x * mm,  //
+                                 along.y * mm, across.y * mm, start.y * mm};
+  return aligned;
+}
+
+Surface MakeSurface(const Patch& patch, const CouponDescription& coupon) {
+  Surface surface;
+  surface.patch = &patch;
+  surface.coupon = &coupon;
+  surface.spectrum = MeasureFieldSpectrum(patch);
+  Expected<Lines> lines = FindLines(patch, surface.spectrum);
+  if (lines) {
+    surface.lines = *lines;
+  } else {
+    surface.no_lines_reason = lines.error().message;
+  }
+  const double lay = surface.lines ? surface.lines->lay_deg : coupon.lay_deg.value_or(0);
+  surface.aligned = AlignField(patch, lay);
+  return surface;
+}
+
+}  // namespace laygauge
