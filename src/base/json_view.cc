@@ -118,10 +118,13 @@ std::optional<double> JsonView::MaybeNumber(std::string_view key) const {
 
 int JsonView::Integer(std::string_view key) const {
   const json& value = Need(key);
-  const auto is_int = value.is_number_integer() &&
-                      value.get<double>() <= std::numeric_limits<int>::max() &&
-                      value.get<double>() >= std::numeric_limits<int>::min();
-  if (!is_int) Fail(key, fmt::format("a whole number was expected, not {}", KindOf(value)));
+  if (!value.is_number_integer()) {
+    Fail(key, fmt::format("a whole number was expected, not {}", KindOf(value)));
+  }
+  const double number = value.get<double>();
+  if (std::abs(number) > std::numeric_limits<int>::max()) {
+    Fail(key, fmt::format("a smaller whole number was expected, not {}", value.dump()));
+  }
   return value.get<int>();
 }
 
