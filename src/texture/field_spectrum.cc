@@ -2,6 +2,7 @@
 
 #include <fmt/format.h>
 
+#include <Eigen/Core>
 #include <cmath>
 #include <numbers>
 #include <opencv2/imgproc.hpp>
@@ -37,11 +38,12 @@ std::vector<int> TileStarts(int begin, int end, int side, double max_overlap) {
 struct WindowedTile {
   cv::Mat values;  // window times mask times (reflectance less its weighted mean)
   double share = 0;
+  double weight_sum = 0;
   double weight_squares = 0;
 };
 
 WindowedTile WindowTile(const Patch& patch, cv::Rect rect, const cv::Mat& window) {
-  WindowedTile tile{cv::Mat(rect.height, rect.width, CV_32FC1), 0, 0};
+  WindowedTile tile{cv::Mat(rect.height, rect.width, CV_32FC1), 0, 0, 0};
   cv::Mat weights(rect.height, rect.width, CV_32FC1);
   double sum = 0;
   double sum_weights = 0;
@@ -69,6 +71,7 @@ WindowedTile WindowTile(const Patch& patch, cv::Rect rect, const cv::Mat& window
     tile.weight_squares += row_squares;
   }
   tile.share = sum_weights / sum_window;
+  tile.weight_sum = sum_weights;
   const auto mean = static_cast<float>(sum_weights > 0 ? sum / sum_weights : 0);
   for (int y = 0; y < rect.height; ++y) {
     const auto* relative = patch.relative.ptr<float>(rect.y + y) + rect.x;
@@ -113,8 +116,11 @@ FieldSpectrum MeasureFieldSpectrum(const Patch& patch, const FieldSpectrumOption
   options.Check();
   const int side = 2 * cv::getOptimalDFTSize(
                            static_cast<int>(std::lround(options.tile_mm * patch.px_per_mm)) / 2);
-  FieldSpectrum result{
-      side, patch.px_per_mm / side, {}, cv::Mat::zeros(side, side / 2 + 1, CV_32FC1)};
+  FieldSpectrum result{side,
+                       patch.px_per_mm,
+                       patch.px_per_mm / side,
+                       {},
+                       cv::Mat::zeros(side, side / 2 + 1, CV_32FC1)};
   const cv::Rect bounds = cv::boundingRect(patch.regions == static_cast<int>(Region::kField));
   const cv::Mat hann(HannWindow(side), true);
   const cv::Mat window = hann * hann.t();
@@ -128,7 +134,12 @@ FieldSpectrum MeasureFieldSpectrum(const Patch& patch, const FieldSpectrumOption
       cv::dft(tile.values, spectrum, cv::DFT_COMPLEX_OUTPUT);
       // Parseval: the plane's sum of |X|^2 is side^2 times the sum of squared weighted values.
       const double scale = 1.0 / (static_cast<double>(side) * side * tile.weight_squares);
-      result.tiles.push_back({{x, y}, HalfPower(spectrum, scale)});
+      const cv::Point2d centre(x + (side - 1) / 2.0, y + (side - 1) / 2.0);
+      result.tiles.push_back({{x, y},
+                              patch.CouponFromPixel(centre),
+                              tile.values,
+                              tile.weight_sum,
+                              HalfPower(spectrum, scale)});
       result.power += result.tiles.back().power;
     }
   }
@@ -136,6 +147,40 @@ FieldSpectrum MeasureFieldSpectrum(const Patch& patch, const FieldSpectrumOption
     result.power /= static_cast<double>(result.tiles.size());
   }
   return result;
+}
+
+std::vector<std::vector<std::complex<double>>> DemodulateTiles(const FieldSpectrum& spectrum,
+                                                               cv::Point2d frequency_per_mm,
+                                                               int harmonics) {
+  using RowMajor = Eigen::Matrix<float, Eigen::Dynamic, Eigen::Dynamic, Eigen::RowMajor>;
+  const int side = spectrum.side_px;
+  const double centre = (side - 1) / 2.0;
+  // Columns 2h and 2h + 1: cosine and sine of harmonic h + 1 along x; the same along y.
+  Eigen::MatrixXf along_x(side, 2 * harmonics);
+  Eigen::MatrixXcd along_y(side, harmonics);
+  for (int h = 0; h < harmonics; ++h) {
+    const cv::Point2d cycles = (h + 1.0) / spectrum.px_per_mm * frequency_per_mm;
+    for (int i = 0; i < side; ++i) {
+      const double turn = 2 * std::numbers::pi * (i - centre);
+      along_x(i, 2 * h) = static_cast<float>(std::cos(turn * cycles.x));
+      along_x(i, 2 * h + 1) = static_cast<float>(std::sin(turn * cycles.x));
+      along_y(i, h) = std::polar(1.0, -turn * cycles.y);
+    }
+  }
+  std::vector<std::vector<std::complex<double>>> amplitudes;
+  for (const SpectrumTile& tile : spectrum.tiles) {
+    const Eigen::Map<const RowMajor> values(tile.values.ptr<float>(), side, side);
+    const Eigen::MatrixXd rows = (values * along_x).cast<double>();
+    auto& of_tile = amplitudes.emplace_back(harmonics);
+    for (int h = 0; h < harmonics; ++h) {
+      const std::complex<double> i(0, 1);
+      const Eigen::VectorXcd row = rows.col(2 * h) - i * rows.col(2 * h + 1);
+      const double turn = 2 * std::numbers::pi * (h + 1) * frequency_per_mm.dot(tile.centre_mm);
+      of_tile[h] = 2 / tile.weight_sum * std::polar(1.0, -turn) *
+                   (along_y.col(h).array() * row.array()).sum();
+    }
+  }
+  return amplitudes;
 }
 
 }  // namespace laygauge

@@ -1,5 +1,6 @@
 #pragma once
 
+#include <complex>
 #include <opencv2/core.hpp>
 #include <vector>
 
@@ -16,8 +17,11 @@ struct FieldSpectrumOptions {
 
 // The windowed power spectrum of one square tile of the field.
 struct SpectrumTile {
-  cv::Point corner_px;  // of the patch
-  cv::Mat power;        // CV_32FC1, side x (side / 2 + 1): squared amplitude density, bin (ky, kx)
+  cv::Point corner_px;    // of the patch
+  cv::Point2d centre_mm;  // in the coupon's frame
+  cv::Mat values;  // CV_32FC1, side x side: weight times (reflectance less its weighted mean)
+  double weight_sum = 0;  // of window times mask
+  cv::Mat power;  // CV_32FC1, side x (side / 2 + 1): squared amplitude density, bin (ky, kx)
 };
 
 // Power spectrum of the field: the mean over tiles of squared windowed Fourier transforms of the
@@ -26,6 +30,7 @@ struct SpectrumTile {
 // = 0..side/2, rows ky = 0..side-1 (ky > side/2 stands for ky - side).
 struct FieldSpectrum {
   int side_px = 0;
+  double px_per_mm = 20;
   double bin_per_mm = 0;  // width of a bin, cycles per mm
   std::vector<SpectrumTile> tiles;
   cv::Mat power;  // CV_32FC1, the mean of the tiles'
@@ -38,5 +43,11 @@ struct FieldSpectrum {
 // Departure: the window is multiplied by the field's mask, so that tiles may touch its border.
 [[nodiscard]] FieldSpectrum MeasureFieldSpectrum(const Patch& patch,
                                                  const FieldSpectrumOptions& options = {});
+
+// Complex amplitude of the wave cos(2 pi frequency . x) in each tile, x in mm from the coupon's
+// origin; entry (tile, harmonic - 1) is that of `harmonic` times the frequency. A wave
+// A cos(2 pi f . x + phi) in a whole tile gives A exp(i phi); the window's sidelobes are its error.
+[[nodiscard]] std::vector<std::vector<std::complex<double>>> DemodulateTiles(
+    const FieldSpectrum& spectrum, cv::Point2d frequency_per_mm, int harmonics);
 
 }  // namespace laygauge

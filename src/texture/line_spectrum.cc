@@ -2,78 +2,396 @@
 
 #include <fmt/format.h>
 
+#include <Eigen/Dense>
 #include <algorithm>
 #include <cmath>
+#include <complex>
 #include <numbers>
+#include <vector>
 
 namespace laygauge {
 namespace {
 
+constexpr double kTwoPi = 2 * std::numbers::pi;
+constexpr double kFinestHarmonicPerMm = 7.5;
+
 struct Peak {
-  cv::Point2d frequency;  // cycles per mm, image axes
+  cv::Point bin;  // (kx, ky) of FieldSpectrum::power
   double power = 0;
 };
 
-cv::Point2d FrequencyOf(const FieldSpectrum& spectrum, int ky, int kx) {
-  const int y = ky > spectrum.side_px / 2 ? ky - spectrum.side_px : ky;
+// Row of the half plane that holds ky, and its value at (kx, ky), which may lie in the other half.
+double PowerAt(const cv::Mat& power, int kx, int ky) {
+  const int rows = power.rows;
+  if (kx < 0) {
+    kx = -kx;
+    ky = -ky;
+  }
+  return power.at<float>(((ky % rows) + rows) % rows, std::min(kx, power.cols - 1));
+}
+
+cv::Point2d FrequencyOf(const FieldSpectrum& spectrum, double kx, double ky) {
+  const double y = ky > spectrum.side_px / 2.0 ? ky - spectrum.side_px : ky;
   return {kx * spectrum.bin_per_mm, y * spectrum.bin_per_mm};
 }
 
-Peak StrongestPeak(const FieldSpectrum& spectrum, double low_per_mm, double high_per_mm) {
+double LayOf(cv::Point2d frequency) {
+  // The lines run at right angles to their wave vector; the image's y points down.
+  const double lay = std::atan2(frequency.x, frequency.y) * 180 / std::numbers::pi;
+  return std::fmod(lay + 360, 180);
+}
+
+// Smallest angle between two directions, degrees, 0..90.
+double AngleBetween(double lay_a_deg, double lay_b_deg) {
+  const double difference = std::fmod(std::abs(lay_a_deg - lay_b_deg), 180);
+  return std::min(difference, 180 - difference);
+}
+
+// The strongest bin within the band for which `wanted(frequency)` holds.
+template <class Wanted>
+Peak StrongestPeak(const FieldSpectrum& spectrum, double low_per_mm, double high_per_mm,
+                   Wanted wanted) {
   Peak best;
   for (int ky = 0; ky < spectrum.power.rows; ++ky) {
+    const auto* row = spectrum.power.ptr<float>(ky);
     for (int kx = 0; kx < spectrum.power.cols; ++kx) {
-      const cv::Point2d f = FrequencyOf(spectrum, ky, kx);
+      if (row[kx] <= best.power) {
+        continue;
+      }
+      const cv::Point2d f = FrequencyOf(spectrum, kx, ky);
       const double radius = std::hypot(f.x, f.y);
-      const double power = spectrum.power.at<float>(ky, kx);
-      if (radius >= low_per_mm && radius <= high_per_mm && power > best.power) {
-        best = {f, power};
+      if (radius >= low_per_mm && radius <= high_per_mm && wanted(f)) {
+        best = {{kx, ky}, row[kx]};
       }
     }
   }
   return best;
 }
 
-double RingMedian(const FieldSpectrum& spectrum, double radius_per_mm) {
+// Power over the median of the bins at the same distance from zero, one and a half bins wide.
+double PeakRatio(const FieldSpectrum& spectrum, const Peak& peak) {
+  const cv::Point2d at = FrequencyOf(spectrum, peak.bin.x, peak.bin.y);
+  const double radius = std::hypot(at.x, at.y);
   std::vector<float> ring;
   for (int ky = 0; ky < spectrum.power.rows; ++ky) {
     for (int kx = 0; kx < spectrum.power.cols; ++kx) {
-      const cv::Point2d f = FrequencyOf(spectrum, ky, kx);
-      if (std::abs(std::hypot(f.x, f.y) - radius_per_mm) < 1.5 * spectrum.bin_per_mm) {
+      const cv::Point2d f = FrequencyOf(spectrum, kx, ky);
+      if (std::abs(std::hypot(f.x, f.y) - radius) < 1.5 * spectrum.bin_per_mm) {
         ring.push_back(spectrum.power.at<float>(ky, kx));
       }
     }
   }
-  std::nth_element(ring.begin(), ring.begin() + ring.size() / 2, ring.end());
-  return ring[ring.size() / 2];
+  const auto middle = ring.begin() + static_cast<std::ptrdiff_t>(ring.size() / 2);
+  std::nth_element(ring.begin(), middle, ring.end());
+  return *middle > 0 ? peak.power / *middle : (peak.power > 0 ? 1e9 : 0);
+}
+
+// Vertex of the parabola through the logarithms of a peak and its two neighbours, in bins.
+double Vertex(double before, double peak, double after) {
+  if (!(before > 0 && peak > 0 && after > 0)) {
+    return 0;
+  }
+  const double a = std::log(before);
+  const double b = std::log(peak);
+  const double c = std::log(after);
+  const double curvature = a - 2 * b + c;
+  return curvature < 0 ? std::clamp(0.5 * (a - c) / curvature, -0.5, 0.5) : 0;
+}
+
+cv::Point2d InterpolatedFrequency(const FieldSpectrum& spectrum, const Peak& peak) {
+  const int x = peak.bin.x;
+  const int y = peak.bin.y;
+  const auto at = [&](int kx, int ky) { return PowerAt(spectrum.power, kx, ky); };
+  return FrequencyOf(spectrum, x, y) +
+         spectrum.bin_per_mm * cv::Point2d(Vertex(at(x - 1, y), peak.power, at(x + 1, y)),
+                                           Vertex(at(x, y - 1), peak.power, at(x, y + 1)));
+}
+
+// What the tiles say about a wave near one frequency.
+struct Wave {
+  cv::Point2d frequency;
+  Eigen::Matrix2d covariance = Eigen::Matrix2d::Zero();  // of the frequency
+  double agreement = 0;  // |sum of amplitudes| / sum of |amplitudes|
+};
+
+using Amplitudes = std::vector<std::complex<double>>;
+
+Amplitudes AmplitudesAt(const FieldSpectrum& spectrum, cv::Point2d frequency) {
+  Amplitudes result;
+  for (const auto& tile : DemodulateTiles(spectrum, frequency, 1)) {
+    result.push_back(tile[0]);
+  }
+  return result;
+}
+
+// Sum of the amplitudes, each turned back by the phase that `shift` gives at its tile.
+std::complex<double> CoherentSum(const FieldSpectrum& spectrum, const Amplitudes& amplitudes,
+                                 cv::Point2d shift) {
+  std::complex<double> sum = 0;
+  for (std::size_t t = 0; t < amplitudes.size(); ++t) {
+    sum += amplitudes[t] * std::polar(1.0, -kTwoPi * shift.dot(spectrum.tiles[t].centre_mm));
+  }
+  return sum;
+}
+
+// The shift, within half a bin, at which the tiles agree best: a grid of a twelfth of a bin.
+cv::Point2d BestShift(const FieldSpectrum& spectrum, const Amplitudes& amplitudes) {
+  constexpr int kSteps = 6;
+  cv::Point2d best;
+  double best_sum = -1;
+  for (int i = -kSteps; i <= kSteps; ++i) {
+    for (int j = -kSteps; j <= kSteps; ++j) {
+      const cv::Point2d shift = spectrum.bin_per_mm / (2 * kSteps) * cv::Point2d(i, j);
+      const double sum = std::norm(CoherentSum(spectrum, amplitudes, shift));
+      if (sum > best_sum) {
+        best_sum = sum;
+        best = shift;
+      }
+    }
+  }
+  return best;
+}
+
+// Weighted least squares of the tiles' phases about their mean: phase = c + 2 pi shift . x.
+// Returns the shift; fills the wave's covariance and agreement.
+cv::Point2d FitPhases(const FieldSpectrum& spectrum, const Amplitudes& amplitudes, Wave& wave) {
+  const std::complex<double> sum = CoherentSum(spectrum, amplitudes, {});
+  Eigen::Matrix3d normal = Eigen::Matrix3d::Zero();
+  Eigen::Vector3d right = Eigen::Vector3d::Zero();
+  double weights = 0;
+  double sum_abs = 0;
+  for (std::size_t t = 0; t < amplitudes.size(); ++t) {
+    const cv::Point2d x = spectrum.tiles[t].centre_mm;
+    const Eigen::Vector3d row(1, kTwoPi * x.x, kTwoPi * x.y);
+    const double phase = std::arg(amplitudes[t] * std::conj(sum));
+    const double weight = std::norm(amplitudes[t]);
+    normal += weight * row * row.transpose();
+    right += weight * phase * row;
+    weights += weight;
+    sum_abs += std::abs(amplitudes[t]);
+  }
+  wave.agreement = sum_abs > 0 ? std::abs(sum) / sum_abs : 0;
+  const auto solver = normal.ldlt();
+  if (amplitudes.size() < 4 || !(weights > 0) || !(solver.rcond() > 1e-12)) {
+    return {};
+  }
+  const Eigen::Vector3d fit = solver.solve(right);
+  double residuals = 0;
+  for (std::size_t t = 0; t < amplitudes.size(); ++t) {
+    const cv::Point2d x = spectrum.tiles[t].centre_mm;
+    const double phase =
+        std::arg(amplitudes[t] * std::conj(sum)) - fit[0] - kTwoPi * (fit[1] * x.x + fit[2] * x.y);
+    residuals += std::norm(amplitudes[t]) * phase * phase;
+  }
+  // Tiles along one line share its wander: a row of them counts as one tile.
+  const double count = static_cast<double>(amplitudes.size());
+  const double variance = residuals / (count - 3) * std::sqrt(count);
+  wave.covariance = variance * solver.solve(Eigen::Matrix3d::Identity()).bottomRightCorner<2, 2>();
+  return {fit[1], fit[2]};
+}
+
+// The wave nearest to `start` (within half a bin) that the tiles agree on.
+Wave RefineWave(const FieldSpectrum& spectrum, cv::Point2d start) {
+  Wave wave{start};
+  for (int pass = 0; pass < 2; ++pass) {
+    wave.frequency += FitPhases(spectrum, AmplitudesAt(spectrum, wave.frequency), wave);
+  }
+  return wave;
+}
+
+Wave FindWave(const FieldSpectrum& spectrum, const Peak& peak) {
+  const cv::Point2d coarse = InterpolatedFrequency(spectrum, peak);
+  return RefineWave(spectrum, coarse + BestShift(spectrum, AmplitudesAt(spectrum, coarse)));
+}
+
+double CoherentPower(const FieldSpectrum& spectrum, cv::Point2d frequency) {
+  return std::norm(CoherentSum(spectrum, AmplitudesAt(spectrum, frequency), {}));
+}
+
+// The strongest of the nine bins about a frequency.
+double PowerNear(const FieldSpectrum& spectrum, cv::Point2d frequency) {
+  const int kx = static_cast<int>(std::lround(frequency.x / spectrum.bin_per_mm));
+  const int ky = static_cast<int>(std::lround(frequency.y / spectrum.bin_per_mm));
+  double power = 0;
+  for (int y = ky - 1; y <= ky + 1; ++y) {
+    for (int x = kx - 1; x <= kx + 1; ++x) {
+      power = std::max(power, PowerAt(spectrum.power, x, y));
+    }
+  }
+  return power;
+}
+
+// Whether the wave at 1 / `divisor` of a strong one is the lines' fundamental: it agrees over the
+// field far better than its neighbourhood on the same ray, and is not faint. A faint one is the
+// alternation of lines laid to and fro; it counts only where the strong one would be too fine for
+// a nozzle.
+bool IsOverDivisor(const FieldSpectrum& spectrum, cv::Point2d strong, int divisor,
+                   const LineSpectrumOptions& options) {
+  constexpr double kFineMm = 0.28;
+  const cv::Point2d low = strong / static_cast<double>(divisor);
+  const double pitch_mm = 1 / std::hypot(low.x, low.y);
+  if (pitch_mm > options.max_pitch_mm || pitch_mm < options.min_pitch_mm) {
+    return false;
+  }
+  // The mean of powers bounds the power of the mean: most strong waves need no closer look.
+  const double least = pitch_mm / divisor < kFineMm ? 0.1 : 0.3;
+  if (PowerNear(spectrum, low) < 0.5 * least * least * PowerNear(spectrum, strong)) {
+    return false;
+  }
+  double around = 0;
+  for (const double offset : {-0.16, -0.12, -0.08, 0.08, 0.12, 0.16}) {
+    around += CoherentPower(spectrum, low * (1 + offset)) / 6;
+  }
+  const double power = CoherentPower(spectrum, low);
+  return power > 8 * around && power > least * least * CoherentPower(spectrum, strong);
+}
+
+// The fundamental's frequency, given that of the strongest peak; none: the peak is too fine for
+// lines and no harmonic of any.
+std::optional<cv::Point2d> Fundamental(const FieldSpectrum& spectrum, cv::Point2d strong,
+                                       const LineSpectrumOptions& options) {
+  for (const int divisor : {3, 2}) {
+    if (IsOverDivisor(spectrum, strong, divisor, options)) {
+      return strong / static_cast<double>(divisor);
+    }
+  }
+  if (std::hypot(strong.x, strong.y) > 1 / options.min_pitch_mm) {
+    return std::nullopt;
+  }
+  return strong;
+}
+
+// Frequency from the fundamental and its harmonics, each weighted by the inverse of its
+// covariance; the covariance is the best one's, as the lines' wander moves them alike.
+Wave JoinHarmonics(const FieldSpectrum& spectrum, cv::Point2d fundamental, double high_per_mm) {
+  Eigen::Matrix2d information = Eigen::Matrix2d::Zero();
+  Eigen::Vector2d weighted = Eigen::Vector2d::Zero();
+  Wave best{fundamental};
+  for (const int harmonic : {1, 2}) {
+    const double k = harmonic;
+    if (k * std::hypot(fundamental.x, fundamental.y) > high_per_mm) {
+      break;
+    }
+    Wave wave = RefineWave(spectrum, k * fundamental);
+    wave.frequency /= k;
+    wave.covariance /= k * k;
+    const double moved = cv::norm(wave.frequency - fundamental) * k;
+    const bool usable = wave.covariance.trace() > 0 && moved < 0.25 * spectrum.bin_per_mm;
+    if (!usable) {
+      continue;
+    }
+    const Eigen::Matrix2d inverse = wave.covariance.inverse();
+    information += inverse;
+    weighted += inverse * Eigen::Vector2d(wave.frequency.x, wave.frequency.y);
+    if (best.agreement == 0 || wave.covariance.trace() < best.covariance.trace()) {
+      best = wave;
+    }
+  }
+  if (best.agreement > 0) {
+    const Eigen::Vector2d joined = information.inverse() * weighted;
+    best.frequency = {joined[0], joined[1]};
+  }
+  return best;
+}
+
+// Share of tiles in which the wave at `other` is stronger than that at `top`.
+double LeadingShare(const FieldSpectrum& spectrum, cv::Point2d other, cv::Point2d top) {
+  const Amplitudes of_other = AmplitudesAt(spectrum, other);
+  const Amplitudes of_top = AmplitudesAt(spectrum, top);
+  int leads = 0;
+  for (std::size_t t = 0; t < of_top.size(); ++t) {
+    leads += std::abs(of_other[t]) > std::abs(of_top[t]) ? 1 : 0;
+  }
+  return static_cast<double>(leads) / static_cast<double>(of_top.size());
+}
+
+Lines Describe(const Wave& wave, double peak_ratio) {
+  Lines lines;
+  lines.frequency_per_mm = wave.frequency.x < 0 ? -wave.frequency : wave.frequency;
+  const double f = std::hypot(wave.frequency.x, wave.frequency.y);
+  const Eigen::Vector2d along(wave.frequency.x / f, wave.frequency.y / f);
+  const Eigen::Vector2d across(-along[1], along[0]);
+  lines.pitch_mm = 1 / f;
+  lines.lay_deg = LayOf(wave.frequency);
+  lines.pitch_sd_mm = std::sqrt(along.dot(wave.covariance * along)) / (f * f);
+  lines.lay_sd_deg = std::sqrt(across.dot(wave.covariance * across)) / f * 180 / std::numbers::pi;
+  lines.phase_agreement = wave.agreement;
+  lines.peak_ratio = peak_ratio;
+  return lines;
+}
+
+// Looks for lines of another direction and tells which are the top's.
+Lines WithSecondLay(const FieldSpectrum& spectrum, const Wave& first, double ratio,
+                    const LineSpectrumOptions& options) {
+  const double f = cv::norm(first.frequency);
+  const double first_lay = LayOf(first.frequency);
+  const Peak peak =
+      StrongestPeak(spectrum, std::max(1 / options.max_pitch_mm, 0.7 * f),
+                    std::min(1 / options.min_pitch_mm, 1.4 * f), [&](cv::Point2d at) {
+                      return AngleBetween(LayOf(at), first_lay) >= options.min_second_lay_deg;
+                    });
+  const double second_ratio = peak.power > 0 ? PeakRatio(spectrum, peak) : 0;
+  Lines lines = Describe(first, ratio);
+  if (second_ratio < options.min_peak_ratio) {
+    return lines;
+  }
+  const Wave second = FindWave(spectrum, peak);
+  const double share = LeadingShare(spectrum, second.frequency, first.frequency);
+  if (share > 0.5) {
+    lines = Describe(second, second_ratio);
+    lines.second_lay = SecondLay{first_lay, 1 - share};
+  } else {
+    lines.second_lay = SecondLay{LayOf(second.frequency), share};
+  }
+  return lines;
 }
 
 }  // namespace
 
 void LineSpectrumOptions::Check() const {
   if (!(min_pitch_mm > 0 && min_pitch_mm < max_pitch_mm)) {
+    throw BadOption(fmt::format("min_pitch_mm is {}: it must be above 0 and below max_pitch_mm, {}",
+                                min_pitch_mm, max_pitch_mm));
+  }
+  if (!(min_peak_ratio >= 3)) {
     throw BadOption(
-        fmt::format("min_pitch_mm is {}: it must be above 0 and below max_pitch_mm", min_pitch_mm));
+        fmt::format("min_peak_ratio is {}: it must be 3 at least, above noise", min_peak_ratio));
+  }
+  if (!(min_contrast >= 0 && min_contrast < 1)) {
+    throw BadOption(fmt::format("min_contrast is {}: it must be within 0..1", min_contrast));
+  }
+  if (!(min_second_lay_deg > 0 && min_second_lay_deg <= 90)) {
+    throw BadOption(
+        fmt::format("min_second_lay_deg is {}: it must be within 0..90", min_second_lay_deg));
   }
 }
 
-Expected<Lines> FindLines(const Patch& patch, const FieldSpectrum& spectrum,
-                          const LineSpectrumOptions& options) {
+Expected<Lines> FindLines(const FieldSpectrum& spectrum, const LineSpectrumOptions& options) {
   options.Check();
-  (void)patch;
   if (spectrum.tiles.empty()) {
-    return Unmeasurable("the coupon's field is smaller than one tile of the line spectrum");
+    return Unmeasurable(
+        fmt::format("the field holds no whole tile of {:.1f} mm: lines need a wider field",
+                    1 / spectrum.bin_per_mm));
   }
-  const Peak peak = StrongestPeak(spectrum, 1 / options.max_pitch_mm, 1 / options.min_pitch_mm);
-  const double radius = std::hypot(peak.frequency.x, peak.frequency.y);
-  const double ratio = radius > 0 ? peak.power / RingMedian(spectrum, radius) : 0;
+  const double low = 1 / options.max_pitch_mm;
+  // A harmonic may outweigh its fundamental: the search reaches beyond the finest pitch.
+  const double limit = std::min(kFinestHarmonicPerMm, 0.4 * spectrum.px_per_mm);
+  const Peak peak = StrongestPeak(spectrum, low, limit, [](cv::Point2d) { return true; });
+  const double ratio = peak.power > 0 ? PeakRatio(spectrum, peak) : 0;
   if (ratio < options.min_peak_ratio) {
-    return Unmeasurable("no lines are visible in the field");
+    return Unmeasurable(fmt::format(
+        "no lines show between {} and {} mm pitch: the strongest wave is {:.1f} times its "
+        "surroundings, {} are needed",
+        options.min_pitch_mm, options.max_pitch_mm, ratio, options.min_peak_ratio));
   }
-  // The lines run at right angles to their wave vector; the image's y points down.
-  const double lay =
-      std::fmod(std::atan2(peak.frequency.x, peak.frequency.y) * 180 / std::numbers::pi + 360, 180);
-  return Lines{1 / radius, lay, ratio};
+  const cv::Point2d strong = FindWave(spectrum, peak).frequency;
+  const std::optional<cv::Point2d> fundamental = Fundamental(spectrum, strong, options);
+  if (!fundamental) {
+    return Unmeasurable(fmt::format(
+        "the strongest wave, {:.3f} mm, is finer than the finest pitch, {} mm, and no harmonic",
+        1 / cv::norm(strong), options.min_pitch_mm));
+  }
+  return WithSecondLay(spectrum, JoinHarmonics(spectrum, *fundamental, limit), ratio, options);
 }
 
 }  // namespace laygauge

@@ -8,7 +8,8 @@ Finding MeasureLines(const Surface& surface) {
     const Feature none{std::nullopt, std::nullopt, surface.no_lines_reason};
     return {{none, none}, {}};
   }
-  return {{{surface.lines->pitch_mm, std::nullopt, ""}, {surface.lines->lay_deg, std::nullopt, ""}},
+  return {{{surface.lines->pitch_mm, surface.lines->pitch_sd_mm, ""},
+           {surface.lines->lay_deg, surface.lines->lay_sd_deg, ""}},
           {}};
 }
 

@@ -39,7 +39,7 @@ cv::Rect2d TurnedBounds(const cv::Mat& field, cv::Point2d origin_px, cv::Point2d
 }  // namespace
 
 AlignedField AlignField(const Patch& patch, double lay_deg) {
-  constexpr double kBorderPx = 8;  // room for filters
+  constexpr int kBorderPx = 10;  // room for filters
   const double lay = lay_deg * std::numbers::pi / 180;
   const cv::Point2d along(std::cos(lay), -std::sin(lay));
   const cv::Point2d across(std::sin(lay), std::cos(lay));
@@ -54,17 +54,23 @@ AlignedField AlignField(const Patch& patch, double lay_deg) {
   const double v0 = std::floor(bounds.y - kBorderPx);
   const cv::Size size(static_cast<int>(bounds.width + 2 * kBorderPx) + 2,
                       static_cast<int>(bounds.height + 2 * kBorderPx) + 2);
-  const cv::Point2d start = along * u0 + across * v0;
-  const cv::Matx23d patch_from_aligned(along.x, across.x, start.x + patch.origin_px.x,  //
-                                       along.y, across.y, start.y + patch.origin_px.y);
-  cv::warpAffine(patch.relative, aligned.relative, patch_from_aligned, size,
-                 cv::INTER_CUBIC | cv::WARP_INVERSE_MAP, cv::BORDER_REPLICATE);
-  cv::warpAffine(patch.regions, aligned.regions, patch_from_aligned, size,
+  // Reading nothing but the field and its border is what makes this fast.
+  cv::Rect read = cv::boundingRect(field);
+  read = cv::Rect(read.x - kBorderPx, read.y - kBorderPx, read.width + 2 * kBorderPx,
+                  read.height + 2 * kBorderPx) &
+         cv::Rect({}, patch.relative.size());
+  const cv::Point2d start = along * u0 + across * v0 + patch.origin_px;
+  const cv::Matx23d read_from_aligned(along.x, across.x, start.x - read.x,  //
+                                      along.y, across.y, start.y - read.y);
+  cv::warpAffine(patch.relative(read), aligned.relative, read_from_aligned, size,
+                 cv::INTER_CUBIC | cv::WARP_INVERSE_MAP, cv::BORDER_CONSTANT, cv::Scalar::all(1));
+  cv::warpAffine(patch.regions(read), aligned.regions, read_from_aligned, size,
                  cv::INTER_NEAREST | cv::WARP_INVERSE_MAP, cv::BORDER_CONSTANT,
                  cv::Scalar::all(static_cast<int>(Region::kOff)));
   const double mm = 1 / patch.px_per_mm;
-  aligned.coupon_from_aligned = {along.x * mm, across.x * mm, start.x * mm,  //
-                                 along.y * mm, across.y * mm, start.y * mm};
+  const cv::Point2d start_mm = patch.CouponFromPixel(start);
+  aligned.coupon_from_aligned = {along.x * mm, across.x * mm, start_mm.x,  //
+                                 along.y * mm, across.y * mm, start_mm.y};
   return aligned;
 }
 
@@ -73,7 +79,7 @@ Surface MakeSurface(const Patch& patch, const CouponDescription& coupon) {
   surface.patch = &patch;
   surface.coupon = &coupon;
   surface.spectrum = MeasureFieldSpectrum(patch);
-  Expected<Lines> lines = FindLines(patch, surface.spectrum);
+  Expected<Lines> lines = FindLines(surface.spectrum);
   if (lines) {
     surface.lines = *lines;
   } else {

@@ -14,7 +14,7 @@ namespace laygauge {
 // The field turned so that the lines run along the rows: columns are along the lay, rows across it.
 struct AlignedField {
   cv::Mat relative;  // CV_32FC1
-  cv::Mat regions;   // CV_8UC1: Region; kOff beyond the patch
+  cv::Mat regions;   // CV_8UC1: Region; kOff beyond the field's border
   double px_per_mm = 20;
   cv::Matx23d coupon_from_aligned;  // pixel of this image -> mm in the coupon's frame
 };
@@ -34,8 +34,9 @@ struct Surface {
 // the result.
 [[nodiscard]] Surface MakeSurface(const Patch& patch, const CouponDescription& coupon);
 
-// The field's bounding box of the patch, turned about the coupon's origin so that the direction
-// `lay_deg` lies along the rows. Bicubic between pixels; regions take their nearest pixel.
+// The field with a border of half a millimetre (at 20 px/mm), turned about the coupon's origin so
+// that the direction `lay_deg` lies along the rows. Bicubic between pixels; regions take their
+// nearest pixel. Beyond the border: 1 and kOff.
 [[nodiscard]] AlignedField AlignField(const Patch& patch, double lay_deg);
 
 }  // namespace laygauge
