@@ -9,6 +9,8 @@
 #include <numbers>
 #include <vector>
 
+#include "base/statistics.h"
+
 namespace laygauge {
 namespace {
 
@@ -98,10 +100,11 @@ double Vertex(double before, double peak, double after) {
   return curvature < 0 ? std::clamp(0.5 * (a - c) / curvature, -0.5, 0.5) : 0;
 }
 
-cv::Point2d InterpolatedFrequency(const FieldSpectrum& spectrum, const Peak& peak) {
+cv::Point2d InterpolatedFrequency(const FieldSpectrum& spectrum, const cv::Mat& power,
+                                  const Peak& peak) {
   const int x = peak.bin.x;
   const int y = peak.bin.y;
-  const auto at = [&](int kx, int ky) { return PowerAt(spectrum.power, kx, ky); };
+  const auto at = [&](int kx, int ky) { return PowerAt(power, kx, ky); };
   return FrequencyOf(spectrum, x, y) +
          spectrum.bin_per_mm * cv::Point2d(Vertex(at(x - 1, y), peak.power, at(x + 1, y)),
                                            Vertex(at(x, y - 1), peak.power, at(x, y + 1)));
@@ -200,7 +203,7 @@ Wave RefineWave(const FieldSpectrum& spectrum, cv::Point2d start) {
 }
 
 Wave FindWave(const FieldSpectrum& spectrum, const Peak& peak) {
-  const cv::Point2d coarse = InterpolatedFrequency(spectrum, peak);
+  const cv::Point2d coarse = InterpolatedFrequency(spectrum, spectrum.power, peak);
   return RefineWave(spectrum, coarse + BestShift(spectrum, AmplitudesAt(spectrum, coarse)));
 }
 
@@ -391,7 +394,74 @@ Expected<Lines> FindLines(const FieldSpectrum& spectrum, const LineSpectrumOptio
         "the strongest wave, {:.3f} mm, is finer than the finest pitch, {} mm, and no harmonic",
         1 / cv::norm(strong), options.min_pitch_mm));
   }
-  return WithSecondLay(spectrum, JoinHarmonics(spectrum, *fundamental, limit), ratio, options);
+  Lines lines =
+      WithSecondLay(spectrum, JoinHarmonics(spectrum, *fundamental, limit), ratio, options);
+  const double contrast = MeasureLineContrast(spectrum, lines).total;
+  if (contrast < options.min_contrast) {
+    return Unmeasurable(fmt::format(
+        "the strongest wave, {:.3f} mm, has an amplitude of {:.4f} of the mean reflectance: below "
+        "{} it may be the camera's grid and not lines",
+        lines.pitch_mm, contrast, options.min_contrast));
+  }
+  return lines;
+}
+
+LineContrast MeasureLineContrast(const FieldSpectrum& spectrum, const Lines& lines) {
+  constexpr int kHarmonics = 3;
+  const auto amplitudes = DemodulateTiles(spectrum, lines.frequency_per_mm, kHarmonics);
+  const double count = static_cast<double>(amplitudes.size());
+  std::vector<std::vector<double>> squares(kHarmonics + 1);
+  std::complex<double> sum = 0;
+  double sum_abs = 0;
+  for (const auto& tile : amplitudes) {
+    double total = 0;
+    for (int h = 0; h < kHarmonics; ++h) {
+      squares[h].push_back(std::norm(tile[h]));
+      total += std::norm(tile[h]);
+    }
+    squares[kHarmonics].push_back(total);
+    sum += tile[0];
+    sum_abs += std::abs(tile[0]);
+  }
+  const auto rms = [&](int h) { return std::sqrt(Mean(squares[h])); };
+  const auto sd = [&](int h) {
+    const double value = rms(h);
+    return value > 0 ? StandardDeviation(squares[h]) / std::sqrt(count) / (2 * value) : 0;
+  };
+  double residuals = 0;
+  const double agreement = sum_abs > 0 ? std::abs(sum) / sum_abs : 0;
+  for (const auto& tile : amplitudes) {
+    const double projected = (tile[0] * std::conj(sum)).real() / std::max(std::abs(sum), 1e-300);
+    residuals += std::pow(projected - agreement * std::abs(tile[0]), 2);
+  }
+  return {rms(0), rms(1), rms(2), rms(3),
+          sd(0),  sd(1),  sd(3),  sum_abs > 0 ? std::sqrt(residuals) / sum_abs : 0};
+}
+
+LineScatter MeasureLineScatter(const FieldSpectrum& spectrum, const Lines& lines) {
+  const double f = cv::norm(lines.frequency_per_mm);
+  const int kx = static_cast<int>(std::lround(lines.frequency_per_mm.x / spectrum.bin_per_mm));
+  const int ky = static_cast<int>(std::lround(lines.frequency_per_mm.y / spectrum.bin_per_mm));
+  std::vector<double> pitches_pct;
+  std::vector<double> lays_deg;
+  for (const SpectrumTile& tile : spectrum.tiles) {
+    Peak peak;
+    for (int y = ky - 1; y <= ky + 1; ++y) {
+      for (int x = std::max(0, kx - 1); x <= kx + 1; ++x) {
+        const double power = PowerAt(tile.power, x, y);
+        if (power > peak.power) {
+          peak = {{x, y}, power};
+        }
+      }
+    }
+    const cv::Point2d at = InterpolatedFrequency(spectrum, tile.power, peak);
+    const double along = at.dot(lines.frequency_per_mm) / f;
+    const double across = at.cross(lines.frequency_per_mm) / f;
+    pitches_pct.push_back(100 * f / std::hypot(along, across));
+    lays_deg.push_back(std::atan2(across, along) * 180 / std::numbers::pi);
+  }
+  return {RobustDeviation(pitches_pct), RobustDeviation(lays_deg),
+          1 / std::sqrt(2.0 * static_cast<double>(spectrum.tiles.size()))};
 }
 
 }  // namespace laygauge
