@@ -29,25 +29,48 @@ Expected<std::string> ReadFile(const fs::path& path) {
   return std::move(bytes).str();
 }
 
-Done WriteFileWhole(const fs::path& path, std::string_view bytes) {
+namespace {
+
+Problem UnwritableFile(const fs::path& path, std::string_view why) {
+  return {ProblemKind::kCannotWrite, fmt::format("{}: cannot be written ({})", path.string(), why)};
+}
+
+fs::path Beside(const fs::path& path) {
   fs::path beside = path;
   beside += fmt::format(".{}.tmp", ::getpid());
-  std::ofstream out(beside, std::ios::binary | std::ios::trunc);
+  return beside;
+}
+
+Done WriteBeside(const fs::path& path, std::string_view bytes) {
+  if (fs::is_directory(path)) return tl::unexpected(UnwritableFile(path, "a folder has this name"));
+  std::ofstream out(Beside(path), std::ios::binary | std::ios::trunc);
   out.write(bytes.data(), static_cast<std::streamsize>(bytes.size()));
   out.close();
-  std::error_code error;
-  if (!out) {
-    const std::string why = std::strerror(errno);
-    fs::remove(beside, error);
-    return CannotWrite(fmt::format("{}: cannot be written ({})", path.string(), why));
-  }
-  fs::rename(beside, path, error);
-  if (error) {
-    const std::string why = error.message();
-    fs::remove(beside, error);
-    return CannotWrite(fmt::format("{}: cannot be written ({})", path.string(), why));
-  }
+  if (!out) return tl::unexpected(UnwritableFile(path, std::strerror(errno)));
   return {};
+}
+
+}  // namespace
+
+Done WriteFileWhole(const fs::path& path, std::string_view bytes) {
+  return WriteFilesWhole({{path, std::string(bytes)}});
+}
+
+Done WriteFilesWhole(const std::vector<FileToWrite>& files) {
+  Done done;
+  for (const FileToWrite& file : files) {
+    if (done) done = WriteBeside(file.path, file.bytes);
+  }
+  std::error_code error;
+  for (const FileToWrite& file : files) {
+    if (!done) break;
+    fs::rename(Beside(file.path), file.path, error);
+    if (error) done = tl::unexpected(UnwritableFile(file.path, error.message()));
+  }
+  if (!done) {
+    for (const FileToWrite& file : files) fs::remove(Beside(file.path), error);
+  }
+  return done;
 }
 
 Done MakeFolder(const fs::path& path) {

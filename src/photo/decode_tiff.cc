@@ -163,6 +163,9 @@ Expected<TiffLayout> ReadLayout(TIFF* tiff, const std::string& file) {
     return tl::unexpected(DamagedImage("TIFF", "colours are missing", file));
   }
   ReadBlocks(tiff, layout);
+  if (layout.block_width == 0 || layout.block_height == 0) {
+    return tl::unexpected(DamagedImage("TIFF", "its parts have no pixels", file));
+  }
   return layout;
 }
 

@@ -1,0 +1,7 @@
+#include "base/version.h"
+
+namespace laygauge {
+
+std::string_view ProgramVersion() { return LAYGAUGE_VERSION; }
+
+}  // namespace laygauge
