@@ -147,7 +147,8 @@ void DrawScaleBar(Page& page, const ScaleBar& bar) {
   page.Text(middle, bar.y_mm - 2, kNote_mm, Anchor::kMiddle,
             fmt::format("this bar: {:.2f} mm", bar.length_mm()));
   page.Text(middle, bar.y_mm + 3.4, kNote_mm, Anchor::kMiddle, "print at 100 %");
-  page.Text(middle, bar.y_mm + 6.0, kNote_mm, Anchor::kMiddle, "bar differs: --bar-mm");
+  page.Text(middle, bar.y_mm + 6.0, kNote_mm, Anchor::kMiddle,
+            fmt::format("not {:.2f}? use --bar-mm", bar.length_mm()));
 }
 
 void DrawSheetName(Page& page, const SheetDescription& sheet) {

@@ -8,6 +8,7 @@
 
 #include "base/file.h"
 #include "sheet/sheet_description.h"
+#include "support/doc_example.h"
 
 namespace laygauge {
 namespace {
@@ -100,6 +101,26 @@ TEST_F(ProgramTest, SheetOfOnesOwnFollowsTheOptions) {
   EXPECT_EQ(sheet->wells.front().width_mm, 44);
   EXPECT_EQ(sheet->markers.front().id, 100);
   EXPECT_EQ(sheet->well_floor_reflectance, 0.4);
+}
+
+// Every `laygauge sheet` line of docs/capture.md, with its outputs in the test's folder.
+TEST_F(ProgramTest, DocumentedSheetCommandsWork) {
+  std::istringstream lines(DocExample("capture.md", "The sheet"));
+  int commands = 0;
+  for (std::string line; std::getline(lines, line);) {
+    std::istringstream words(line);
+    std::vector<std::string> arguments;
+    for (std::string word; words >> word;) {
+      arguments.push_back(word.ends_with(".pdf") ? In(word) : word);
+    }
+    ASSERT_EQ(arguments.at(0), "laygauge");
+    arguments.erase(arguments.begin());
+    const Outcome outcome = RunWith(arguments);
+    EXPECT_EQ(outcome.code, kExitDone) << line << ": " << outcome.err;
+    ++commands;
+  }
+  EXPECT_EQ(FileCount(), 2U * static_cast<size_t>(commands));
+  EXPECT_GE(commands, 3);
 }
 
 TEST_F(ProgramTest, WhatCannotBeWrittenLeavesNothing) {

@@ -130,6 +130,17 @@ std::string EncodePalettePng(const cv::Mat& indices, const std::vector<cv::Vec3b
   return writer.Write(indices, PNG_COLOR_TYPE_PALETTE, false);
 }
 
+std::string EncodePngHeader(int width, int height) {
+  PngWriter writer;
+  png_set_IHDR(writer.png, writer.info, static_cast<png_uint_32>(width),
+               static_cast<png_uint_32>(height), 8, PNG_COLOR_TYPE_GRAY, PNG_INTERLACE_NONE,
+               PNG_COMPRESSION_TYPE_BASE, PNG_FILTER_TYPE_BASE);
+  png_write_info(writer.png, writer.info);
+  png_write_chunk(writer.png, reinterpret_cast<png_const_bytep>("IDAT"),
+                  reinterpret_cast<png_const_bytep>("x"), 1);
+  return writer.bytes;
+}
+
 namespace {
 
 void WriteTiffPixels(TIFF* tiff, const cv::Mat& pixels, const TiffChoices& choices) {

@@ -27,6 +27,9 @@ struct PngChoices {
 [[nodiscard]] std::string EncodePalettePng(const cv::Mat& indices,
                                            const std::vector<cv::Vec3b>& palette);
 
+// Claims this size, and holds no pixels.
+[[nodiscard]] std::string EncodePngHeader(int width, int height);
+
 struct TiffChoices {
   std::uint16_t compression = 1;  // none
   bool tiled = false;             // 16 x 16

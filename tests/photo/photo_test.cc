@@ -288,6 +288,8 @@ TEST_F(PhotoTest, AbsurdSizesAreRefusedBeforeTheyAreAllocated) {
   ASSERT_NE(frame, std::string::npos);
   jpeg.replace(frame + 5, 4, "\xEA\x60\xEA\x60");
   EXPECT_NE(Refusal(jpeg).find("60000 x 60000 pixels large"), std::string::npos);
+  const std::string png = testing::EncodePngHeader(60000, 60000);
+  EXPECT_NE(Refusal(png).find("60000 x 60000 pixels large"), std::string::npos);
 }
 
 }  // namespace

@@ -4,6 +4,8 @@
 
 #include <cmath>
 
+#include "support/doc_example.h"
+
 namespace laygauge {
 namespace {
 
@@ -60,6 +62,25 @@ TEST(PlanSheet, DefaultsAreValid) { EXPECT_NO_THROW(SheetPlan{}.Check()); }
 TEST(PlanSheet, TheReadyPlansAreTheShippedSheets) {
   ExpectSame(PlanSheet(PlanOfA5With6()), Shipped("a5-6"));
   ExpectSame(PlanSheet(PlanOfA4With15()), Shipped("a4-15"));
+}
+
+// The documented example is what the plan gives, but for the grays that it leaves out.
+TEST(PlanSheet, TheDocumentedExampleIsAPlan) {
+  const auto example = ParseSheet(DocExample("formats.md", "Sheet description"), "formats.md");
+  ASSERT_TRUE(example) << example.error().message;
+  EXPECT_TRUE(example->unknown_keys.empty());
+  SheetPlan plan;
+  plan.name = "two-wells";
+  plan.page_width_mm = 148;
+  plan.page_height_mm = 90;
+  plan.rows = 1;
+  plan.columns = 2;
+  plan.first_marker = 300;
+  plan.well_floor_reflectance = 0.4;
+  SheetDescription planned = PlanSheet(plan);
+  EXPECT_EQ(planned.well_floor_reflectance, example->well_floor_reflectance);
+  planned.grays.resize(example->grays.size());
+  ExpectSame(planned, *example);
 }
 
 struct Box {
