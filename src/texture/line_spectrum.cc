@@ -137,17 +137,32 @@ std::complex<double> CoherentSum(const FieldSpectrum& spectrum, const Amplitudes
   return sum;
 }
 
-// The shift, within half a bin, at which the tiles agree best: a grid of a twelfth of a bin.
-cv::Point2d BestShift(const FieldSpectrum& spectrum, const Amplitudes& amplitudes) {
+// The shift, within half a bin, at which the tiles agree best on the wave and its second harmonic:
+// a grid of a twelfth of a bin. Each harmonic counts by its agreement, not by its strength, as a
+// strong fundamental may be spread by the lines' wander while a faint harmonic is sharp.
+cv::Point2d BestShift(const FieldSpectrum& spectrum, cv::Point2d coarse, double high_per_mm) {
   constexpr int kSteps = 6;
+  const int harmonics = 2 * cv::norm(coarse) <= high_per_mm ? 2 : 1;
+  const auto tiles = DemodulateTiles(spectrum, coarse, harmonics);
+  std::vector<Amplitudes> amplitudes(harmonics);
+  std::vector<double> powers(harmonics, 1e-300);
+  for (const auto& tile : tiles) {
+    for (int h = 0; h < harmonics; ++h) {
+      amplitudes[h].push_back(tile[h]);
+      powers[h] += std::norm(tile[h]);
+    }
+  }
   cv::Point2d best;
-  double best_sum = -1;
+  double best_agreement = -1;
   for (int i = -kSteps; i <= kSteps; ++i) {
     for (int j = -kSteps; j <= kSteps; ++j) {
       const cv::Point2d shift = spectrum.bin_per_mm / (2 * kSteps) * cv::Point2d(i, j);
-      const double sum = std::norm(CoherentSum(spectrum, amplitudes, shift));
-      if (sum > best_sum) {
-        best_sum = sum;
+      double agreement = 0;
+      for (int h = 0; h < harmonics; ++h) {
+        agreement += std::norm(CoherentSum(spectrum, amplitudes[h], (h + 1.0) * shift)) / powers[h];
+      }
+      if (agreement > best_agreement) {
+        best_agreement = agreement;
         best = shift;
       }
     }
@@ -202,9 +217,9 @@ Wave RefineWave(const FieldSpectrum& spectrum, cv::Point2d start) {
   return wave;
 }
 
-Wave FindWave(const FieldSpectrum& spectrum, const Peak& peak) {
+Wave FindWave(const FieldSpectrum& spectrum, const Peak& peak, double high_per_mm) {
   const cv::Point2d coarse = InterpolatedFrequency(spectrum, spectrum.power, peak);
-  return RefineWave(spectrum, coarse + BestShift(spectrum, AmplitudesAt(spectrum, coarse)));
+  return RefineWave(spectrum, coarse + BestShift(spectrum, coarse, high_per_mm));
 }
 
 double CoherentPower(const FieldSpectrum& spectrum, cv::Point2d frequency) {
@@ -338,7 +353,7 @@ Lines WithSecondLay(const FieldSpectrum& spectrum, const Wave& first, double rat
   if (second_ratio < options.min_peak_ratio) {
     return lines;
   }
-  const Wave second = FindWave(spectrum, peak);
+  const Wave second = FindWave(spectrum, peak, 1 / options.min_pitch_mm);
   const double share = LeadingShare(spectrum, second.frequency, first.frequency);
   if (share > 0.5) {
     lines = Describe(second, second_ratio);
@@ -387,7 +402,8 @@ Expected<Lines> FindLines(const FieldSpectrum& spectrum, const LineSpectrumOptio
         "surroundings, {} are needed",
         options.min_pitch_mm, options.max_pitch_mm, ratio, options.min_peak_ratio));
   }
-  const cv::Point2d strong = FindWave(spectrum, peak).frequency;
+  const cv::Point2d coarse = InterpolatedFrequency(spectrum, spectrum.power, peak);
+  const cv::Point2d strong = coarse + BestShift(spectrum, coarse, limit);
   const std::optional<cv::Point2d> fundamental = Fundamental(spectrum, strong, options);
   if (!fundamental) {
     return Unmeasurable(fmt::format(
