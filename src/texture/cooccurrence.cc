@@ -5,6 +5,7 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
+#include <limits>
 #include <stdexcept>
 
 #include "base/error.h"
@@ -68,8 +69,13 @@ void Add(CooccurrenceMatrix& sum, const CooccurrenceMatrix& part) {
 constexpr int kFeatures = 6;
 using Values = std::array<double, kFeatures>;
 
+// NaN: not measurable.
 Values ToValues(const CooccurrenceFeatures& f) {
-  return {f.contrast, f.dissimilarity, f.homogeneity, f.asm_, f.entropy, f.correlation};
+  // Levels that scatter by less than half a level correlate by where the scale's steps lie.
+  constexpr double kLeastVariance = 0.25;
+  const double correlation =
+      f.variance >= kLeastVariance ? f.correlation : std::numeric_limits<double>::quiet_NaN();
+  return {f.contrast, f.dissimilarity, f.homogeneity, f.asm_, f.entropy, correlation};
 }
 
 // Features of the whole and, for their standard deviations, of stripes of rows.
@@ -97,10 +103,12 @@ Direction MeasureDirection(const cv::Mat& marked, int levels, int down, int righ
   return direction;
 }
 
-Feature WithSd(double value, const std::vector<double>& parts) {
+// Value and standard deviation of its mean over the stripes that have one.
+Feature WithSd(double value, std::vector<double> parts) {
   if (!std::isfinite(value)) {
-    return {std::nullopt, std::nullopt, "the ratio's divisor is 0"};
+    return {std::nullopt, std::nullopt, "the field is all but one gray level"};
   }
+  std::erase_if(parts, [](double part) { return !std::isfinite(part); });
   if (parts.size() < 2) {
     return {value, std::nullopt, ""};
   }
@@ -109,7 +117,7 @@ Feature WithSd(double value, const std::vector<double>& parts) {
 
 Finding Measure(const Surface& surface) {
   const CooccurrenceOptions options;
-  const AlignedField& field = surface.aligned;
+  const AlignedField& field = surface.aligned_half;
   const int offset = static_cast<int>(std::lround(options.offset_mm * field.px_per_mm));
   const cv::Mat mask = field.regions == static_cast<int>(Region::kField);
   if (field.relative.empty() || cv::countNonZero(mask) == 0) {
@@ -185,8 +193,8 @@ CooccurrenceFeatures DescribeCooccurrence(const CooccurrenceMatrix& matrix) {
       product += p * i * j;
     }
   }
-  const double variance = square - mean * mean;
-  f.correlation = variance > 1e-12 ? (product - mean * mean) / variance : 1;
+  f.variance = square - mean * mean;
+  f.correlation = f.variance > 1e-12 ? (product - mean * mean) / f.variance : 1;
   return f;
 }
 

@@ -29,6 +29,7 @@ struct CooccurrenceFeatures {
   double homogeneity = 0;    // sum p / (1 + (i - j)^2), the paper's inverse difference moment
   double asm_ = 0;           // angular second moment, sum p^2
   double entropy = 0;        // -sum p log2 p, bit
+  double variance = 0;       // of the levels
   double correlation = 0;    // sum p (i - mean)(j - mean) / variance; 1 for a single level
 };
 
@@ -37,9 +38,12 @@ struct CooccurrenceFeatures {
 [[nodiscard]] CooccurrenceFeatures DescribeCooccurrence(const CooccurrenceMatrix& matrix);
 
 struct CooccurrenceOptions {
-  double low = 0.4;   // relative reflectance: the lower end of level 0; below counts as level 0
-  double high = 1.6;  // the upper end of the last level; above counts as the last
-  int levels = 32;
+  // Ends of the gray scale, in relative reflectance; what lies beyond counts as the first or last
+  // level. 29 levels of 0.05, so that the coupon's own level, 1, is the centre of one: noise does
+  // not throw a smooth surface from level to level.
+  double low = 0.175;
+  double high = 1.625;
+  int levels = 29;
   double offset_mm = 0.2;
   void Check() const;  // throws BadOption: field, value, rule
 };

@@ -84,7 +84,7 @@ double SpreadOf(double resultant) {
 }
 
 Finding Measure(const Surface& surface) {
-  const AlignedField& field = surface.aligned;
+  const AlignedField& field = surface.aligned_half;
   std::optional<GradientEnergy> energy;
   if (!field.relative.empty()) {
     const cv::Mat mask = field.regions == static_cast<int>(Region::kField);

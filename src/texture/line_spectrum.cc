@@ -114,10 +114,21 @@ cv::Point2d InterpolatedFrequency(const FieldSpectrum& spectrum, const cv::Mat& 
 struct Wave {
   cv::Point2d frequency;
   Eigen::Matrix2d covariance = Eigen::Matrix2d::Zero();  // of the frequency
-  double agreement = 0;  // |sum of amplitudes| / sum of |amplitudes|
+  double agreement = 0;                                  // of the tiles
 };
 
 using Amplitudes = std::vector<std::complex<double>>;
+
+// |sum| / sum of absolute values: 1 if all phases are equal.
+double Agreement(const Amplitudes& amplitudes) {
+  std::complex<double> sum = 0;
+  double sum_abs = 0;
+  for (const auto& a : amplitudes) {
+    sum += a;
+    sum_abs += std::abs(a);
+  }
+  return sum_abs > 0 ? std::abs(sum) / sum_abs : 0;
+}
 
 Amplitudes AmplitudesAt(const FieldSpectrum& spectrum, cv::Point2d frequency) {
   Amplitudes result;
@@ -171,13 +182,12 @@ cv::Point2d BestShift(const FieldSpectrum& spectrum, cv::Point2d coarse, double 
 }
 
 // Weighted least squares of the tiles' phases about their mean: phase = c + 2 pi shift . x.
-// Returns the shift; fills the wave's covariance and agreement.
+// Returns the shift; fills the wave's covariance.
 cv::Point2d FitPhases(const FieldSpectrum& spectrum, const Amplitudes& amplitudes, Wave& wave) {
   const std::complex<double> sum = CoherentSum(spectrum, amplitudes, {});
   Eigen::Matrix3d normal = Eigen::Matrix3d::Zero();
   Eigen::Vector3d right = Eigen::Vector3d::Zero();
   double weights = 0;
-  double sum_abs = 0;
   for (std::size_t t = 0; t < amplitudes.size(); ++t) {
     const cv::Point2d x = spectrum.tiles[t].centre_mm;
     const Eigen::Vector3d row(1, kTwoPi * x.x, kTwoPi * x.y);
@@ -186,9 +196,7 @@ cv::Point2d FitPhases(const FieldSpectrum& spectrum, const Amplitudes& amplitude
     normal += weight * row * row.transpose();
     right += weight * phase * row;
     weights += weight;
-    sum_abs += std::abs(amplitudes[t]);
   }
-  wave.agreement = sum_abs > 0 ? std::abs(sum) / sum_abs : 0;
   const auto solver = normal.ldlt();
   if (amplitudes.size() < 4 || !(weights > 0) || !(solver.rcond() > 1e-12)) {
     return {};
@@ -301,26 +309,43 @@ Wave JoinHarmonics(const FieldSpectrum& spectrum, cv::Point2d fundamental, doubl
     const Eigen::Matrix2d inverse = wave.covariance.inverse();
     information += inverse;
     weighted += inverse * Eigen::Vector2d(wave.frequency.x, wave.frequency.y);
-    if (best.agreement == 0 || wave.covariance.trace() < best.covariance.trace()) {
+    if (best.covariance.trace() == 0 || wave.covariance.trace() < best.covariance.trace()) {
       best = wave;
     }
   }
-  if (best.agreement > 0) {
+  if (best.covariance.trace() > 0) {
     const Eigen::Vector2d joined = information.inverse() * weighted;
     best.frequency = {joined[0], joined[1]};
   }
+  best.agreement = Agreement(AmplitudesAt(spectrum, best.frequency));
   return best;
 }
 
-// Share of tiles in which the wave at `other` is stronger than that at `top`.
-double LeadingShare(const FieldSpectrum& spectrum, cv::Point2d other, cv::Point2d top) {
+// Number of tiles in which the wave at `other` outweighs that at `top`.
+int LeadingTiles(const FieldSpectrum& spectrum, cv::Point2d other, cv::Point2d top) {
   const Amplitudes of_other = AmplitudesAt(spectrum, other);
   const Amplitudes of_top = AmplitudesAt(spectrum, top);
   int leads = 0;
   for (std::size_t t = 0; t < of_top.size(); ++t) {
     leads += std::abs(of_other[t]) > std::abs(of_top[t]) ? 1 : 0;
   }
-  return static_cast<double>(leads) / static_cast<double>(of_top.size());
+  return leads;
+}
+
+// Whether lines that lead in a share of the tiles are the top's: where both directions cover much,
+// the drawing's lay decides if it fits one of them and not the other.
+bool SecondIsTop(double first_lay_deg, double second_lay_deg, double second_share,
+                 const LineSpectrumOptions& options) {
+  constexpr double kMuch = 0.25;
+  constexpr double kFitsDeg = 10;
+  if (options.nominal_lay_deg && std::abs(second_share - 0.5) < 0.5 - kMuch) {
+    const bool first_fits = AngleBetween(*options.nominal_lay_deg, first_lay_deg) < kFitsDeg;
+    const bool second_fits = AngleBetween(*options.nominal_lay_deg, second_lay_deg) < kFitsDeg;
+    if (first_fits != second_fits) {
+      return second_fits;
+    }
+  }
+  return second_share > 0.5;
 }
 
 Lines Describe(const Wave& wave, double peak_ratio) {
@@ -354,9 +379,16 @@ Lines WithSecondLay(const FieldSpectrum& spectrum, const Wave& first, double rat
     return lines;
   }
   const Wave second = FindWave(spectrum, peak, 1 / options.min_pitch_mm);
-  const double share = LeadingShare(spectrum, second.frequency, first.frequency);
-  if (share > 0.5) {
-    lines = Describe(second, second_ratio);
+  // A scar's straight edge is a wave of all frequencies in one direction; it leads nowhere.
+  constexpr int kLeastTiles = 2;
+  const int leads = LeadingTiles(spectrum, second.frequency, first.frequency);
+  const double share = static_cast<double>(leads) / static_cast<double>(spectrum.tiles.size());
+  if (leads < kLeastTiles) {
+    return lines;
+  }
+  if (SecondIsTop(first_lay, LayOf(second.frequency), share, options)) {
+    lines =
+        Describe(JoinHarmonics(spectrum, second.frequency, 1 / options.min_pitch_mm), second_ratio);
     lines.second_lay = SecondLay{first_lay, 1 - share};
   } else {
     lines.second_lay = SecondLay{LayOf(second.frequency), share};
@@ -458,26 +490,36 @@ LineScatter MeasureLineScatter(const FieldSpectrum& spectrum, const Lines& lines
   const double f = cv::norm(lines.frequency_per_mm);
   const int kx = static_cast<int>(std::lround(lines.frequency_per_mm.x / spectrum.bin_per_mm));
   const int ky = static_cast<int>(std::lround(lines.frequency_per_mm.y / spectrum.bin_per_mm));
-  std::vector<double> pitches_pct;
-  std::vector<double> lays_deg;
+  double pitch_squares = 0;
+  double lay_squares = 0;
+  double weights = 0;
+  double weight_squares = 0;
   for (const SpectrumTile& tile : spectrum.tiles) {
     Peak peak;
     for (int y = ky - 1; y <= ky + 1; ++y) {
       for (int x = std::max(0, kx - 1); x <= kx + 1; ++x) {
         const double power = PowerAt(tile.power, x, y);
         if (power > peak.power) {
-          peak = {{x, y}, power};
+          peak = {{x, (y + spectrum.side_px) % spectrum.side_px}, power};
         }
       }
     }
     const cv::Point2d at = InterpolatedFrequency(spectrum, tile.power, peak);
     const double along = at.dot(lines.frequency_per_mm) / f;
     const double across = at.cross(lines.frequency_per_mm) / f;
-    pitches_pct.push_back(100 * f / std::hypot(along, across));
-    lays_deg.push_back(std::atan2(across, along) * 180 / std::numbers::pi);
+    const double pitch_pct = 100 * (f / std::hypot(along, across) - 1);
+    const double lay_deg = std::atan2(across, along) * 180 / std::numbers::pi;
+    pitch_squares += peak.power * pitch_pct * pitch_pct;
+    lay_squares += peak.power * lay_deg * lay_deg;
+    weights += peak.power;
+    weight_squares += peak.power * peak.power;
   }
-  return {RobustDeviation(pitches_pct), RobustDeviation(lays_deg),
-          1 / std::sqrt(2.0 * static_cast<double>(spectrum.tiles.size()))};
+  if (!(weights > 0)) {
+    return {};
+  }
+  const double effective_tiles = weights * weights / weight_squares;
+  return {std::sqrt(pitch_squares / weights), std::sqrt(lay_squares / weights),
+          1 / std::sqrt(2 * effective_tiles)};
 }
 
 }  // namespace laygauge

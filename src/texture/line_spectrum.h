@@ -15,7 +15,9 @@ struct LineSpectrumOptions {
   double min_peak_ratio = 12;
   double min_contrast = 0.003;     // of the fundamental and its harmonics, of mean reflectance
   double min_second_lay_deg = 15;  // between the lays of two layers
-  void Check() const;              // throws BadOption: field, value, rule
+  std::optional<double> nominal_lay_deg =
+      std::nullopt;    // of the drawing: decides between two lays that both lead
+  void Check() const;  // throws BadOption: field, value, rule
 };
 
 // Lines of another direction in the same field: the layer below shows.
@@ -40,8 +42,8 @@ struct Lines {
 // through the logarithms of its neighbours), then the plane that fits the phases of all tiles at
 // that frequency, found on a grid and refined by least squares, weighted by the tiles'
 // amplitudes. A harmonic that outweighs its fundamental is recognised by the waves at a half and
-// a third of its frequency, which agree over the whole field. Of two lays the one that leads in
-// more tiles is the top's.
+// a third of its frequency, which agree over the whole field. Of two lays the top's is the one
+// that leads in more tiles (see also nominal_lay_deg).
 // Standard deviations: of the fit, from the tiles' residual phases.
 // Problem: the field is smaller than one tile, or shows no lines.
 // Sources: Rife & Boorstyn, "Single tone parameter estimation from discrete-time observations",
@@ -65,8 +67,8 @@ struct LineContrast {
 };
 [[nodiscard]] LineContrast MeasureLineContrast(const FieldSpectrum& spectrum, const Lines& lines);
 
-// How far the tiles' own pitches and lays scatter: robust deviations (median absolute deviation
-// times 1.4826) of the peak next to the lines' wave vector in each tile's spectrum.
+// How far the tiles' own pitches and lays lie from the field's: root mean squares, weighted by the
+// power, of the peak next to the lines' wave vector in each tile's spectrum.
 struct LineScatter {
   double pitch_pct = 0;
   double lay_deg = 0;

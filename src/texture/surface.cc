@@ -74,12 +74,41 @@ AlignedField AlignField(const Patch& patch, double lay_deg) {
   return aligned;
 }
 
+AlignedField HalveField(const AlignedField& field) {
+  AlignedField half;
+  half.px_per_mm = field.px_per_mm / 2;
+  const int rows = field.relative.rows / 2;
+  const int cols = field.relative.cols / 2;
+  half.relative.create(rows, cols, CV_32FC1);
+  half.regions.create(rows, cols, CV_8UC1);
+  for (int y = 0; y < rows; ++y) {
+    const auto* top = field.relative.ptr<float>(2 * y);
+    const auto* low = field.relative.ptr<float>(2 * y + 1);
+    const auto* top_region = field.regions.ptr<std::uint8_t>(2 * y);
+    const auto* low_region = field.regions.ptr<std::uint8_t>(2 * y + 1);
+    auto* out = half.relative.ptr<float>(y);
+    auto* out_region = half.regions.ptr<std::uint8_t>(y);
+    for (int x = 0; x < cols; ++x) {
+      out[x] = 0.25F * (top[2 * x] + top[2 * x + 1] + low[2 * x] + low[2 * x + 1]);
+      out_region[x] = std::min(std::min(top_region[2 * x], top_region[2 * x + 1]),
+                               std::min(low_region[2 * x], low_region[2 * x + 1]));
+    }
+  }
+  // The centre of pixel (0, 0) lies at (0.5, 0.5) of the finer image.
+  const cv::Matx23d& m = field.coupon_from_aligned;
+  half.coupon_from_aligned = {2 * m(0, 0), 2 * m(0, 1), m(0, 2) + 0.5 * (m(0, 0) + m(0, 1)),  //
+                              2 * m(1, 0), 2 * m(1, 1), m(1, 2) + 0.5 * (m(1, 0) + m(1, 1))};
+  return half;
+}
+
 Surface MakeSurface(const Patch& patch, const CouponDescription& coupon) {
   Surface surface;
   surface.patch = &patch;
   surface.coupon = &coupon;
   surface.spectrum = MeasureFieldSpectrum(patch);
-  Expected<Lines> lines = FindLines(surface.spectrum);
+  LineSpectrumOptions options;
+  options.nominal_lay_deg = coupon.lay_deg;
+  const Expected<Lines> lines = FindLines(surface.spectrum, options);
   if (lines) {
     surface.lines = *lines;
   } else {
@@ -87,6 +116,7 @@ Surface MakeSurface(const Patch& patch, const CouponDescription& coupon) {
   }
   const double lay = surface.lines ? surface.lines->lay_deg : coupon.lay_deg.value_or(0);
   surface.aligned = AlignField(patch, lay);
+  surface.aligned_half = HalveField(surface.aligned);
   return surface;
 }
 

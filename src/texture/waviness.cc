@@ -18,6 +18,7 @@ struct CellField {
   cv::Mat values;   // CV_32FC1: mean of the cell's field pixels; 0 where there are none
   cv::Mat weights;  // CV_32FC1: share of the cell's pixels in the field
   double cell_mm = 0;
+  double width_mm = 0;  // the shorter side of the field's bounds
 };
 
 CellField AverageCells(const Patch& patch, double cell_mm) {
@@ -26,19 +27,26 @@ CellField AverageCells(const Patch& patch, double cell_mm) {
   const int side = std::max(1, static_cast<int>(std::lround(cell_mm * patch.px_per_mm)));
   CellField cells;
   cells.cell_mm = side / patch.px_per_mm;
+  cells.width_mm = std::min(bounds.width, bounds.height) / patch.px_per_mm;
   const cv::Size size((bounds.width + side - 1) / side, (bounds.height + side - 1) / side);
   cells.values = cv::Mat::zeros(size, CV_32FC1);
   cells.weights = cv::Mat::zeros(size, CV_32FC1);
-  for (int y = 0; y < bounds.height; ++y) {
-    const auto* in = field.ptr<std::uint8_t>(bounds.y + y) + bounds.x;
-    const auto* relative = patch.relative.ptr<float>(bounds.y + y) + bounds.x;
-    auto* value = cells.values.ptr<float>(y / side);
-    auto* weight = cells.weights.ptr<float>(y / side);
-    for (int x = 0; x < bounds.width; ++x) {
-      if (in[x] != 0) {
-        value[x / side] += relative[x];
-        weight[x / side] += 1;
+  std::vector<float> sums(size.width * side);
+  std::vector<float> counts(size.width * side);
+  for (int row = 0; row < size.height; ++row) {
+    std::fill(sums.begin(), sums.end(), 0.0F);
+    std::fill(counts.begin(), counts.end(), 0.0F);
+    for (int y = row * side; y < std::min(bounds.height, (row + 1) * side); ++y) {
+      const auto* in = field.ptr<std::uint8_t>(bounds.y + y) + bounds.x;
+      const auto* relative = patch.relative.ptr<float>(bounds.y + y) + bounds.x;
+      for (int x = 0; x < bounds.width; ++x) {
+        sums[x] += in[x] != 0 ? relative[x] : 0.0F;
+        counts[x] += in[x] != 0 ? 1.0F : 0.0F;
       }
+    }
+    for (std::size_t x = 0; x < sums.size(); ++x) {
+      cells.values.at<float>(row, static_cast<int>(x) / side) += sums[x];
+      cells.weights.at<float>(row, static_cast<int>(x) / side) += counts[x];
     }
   }
   for (auto v = cells.values.begin<float>(), w = cells.weights.begin<float>();
@@ -117,10 +125,9 @@ void WavinessOptions::Check() const {
 Expected<Waviness> MeasureWaviness(const Patch& patch, const WavinessOptions& options) {
   options.Check();
   CellField cells = AverageCells(patch, options.cell_mm);
-  const double width_mm = std::min(cells.values.cols, cells.values.rows) * cells.cell_mm;
-  if (cells.values.empty() || width_mm < options.max_wavelength_mm) {
-    return Unmeasurable(fmt::format("the field is {:.1f} mm wide: waviness needs {} mm", width_mm,
-                                    options.max_wavelength_mm));
+  if (cells.width_mm < options.max_wavelength_mm) {
+    return Unmeasurable(fmt::format("the field is {:.1f} mm wide: waviness needs {} mm",
+                                    cells.width_mm, options.max_wavelength_mm));
   }
   RemoveForm(cells);
   const cv::Mat band =

@@ -1,10 +1,11 @@
 #include "support/render_lines.h"
 
+#include <algorithm>
 #include <cmath>
-#include <map>
 #include <numbers>
 #include <opencv2/imgproc.hpp>
 #include <random>
+#include <vector>
 
 namespace laygauge {
 namespace {
@@ -58,10 +59,10 @@ cv::Mat SquareCouponRegions(double px_per_mm, double side_mm) {
 Patch RenderLines(const LinesToRender& lines) {
   std::mt19937_64 random(lines.seed);
   std::normal_distribution<double> normal;
-  std::map<int, double> offsets;  // of each line, by number
   const int last = static_cast<int>(lines.side_mm / lines.pitch_mm) + 2;
-  for (int line = -last; line <= last; ++line) {
-    offsets[line] = lines.wander_mm > 0 ? lines.wander_mm * normal(random) : 0;
+  std::vector<double> offsets(2 * last + 1, 0);  // of lines -last..last
+  if (lines.wander_mm > 0) {
+    std::generate(offsets.begin(), offsets.end(), [&] { return lines.wander_mm * normal(random); });
   }
   Patch patch;
   patch.px_per_mm = lines.px_per_mm;
@@ -73,7 +74,7 @@ Patch RenderLines(const LinesToRender& lines) {
     for (int x = 0; x < patch.relative.cols; ++x) {
       const double across = AcrossLay(patch.CouponFromPixel(cv::Point2d(x, y)), lines.lay_deg);
       const int line = static_cast<int>(std::lround(across / lines.pitch_mm));
-      const double phase = kTwoPi * (across - offsets[line]) / lines.pitch_mm;
+      const double phase = kTwoPi * (across - offsets[last + line]) / lines.pitch_mm;
       patch.relative.at<float>(y, x) = static_cast<float>(1 + lines.first * std::cos(phase) +
                                                           lines.second * std::cos(2 * phase));
     }
