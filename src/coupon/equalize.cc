@@ -1,0 +1,50 @@
+#include "coupon/equalize.h"
+
+#include <fmt/format.h>
+
+#include <algorithm>
+#include <opencv2/core.hpp>
+
+#include "coupon/equalizing_kernel.h"
+
+namespace laygauge {
+
+void EqualizeOptions::Check() const {
+  if (!(working_blur_sd_mm >= 0.02 && working_blur_sd_mm <= 0.3)) {
+    throw BadOption(
+        fmt::format("working_blur_sd_mm = {}: must be 0.02 to 0.3", working_blur_sd_mm));
+  }
+  if (!(max_gain >= 1 && max_gain <= 10)) {
+    throw BadOption(fmt::format("max_gain = {}: must be 1 to 10", max_gain));
+  }
+}
+
+Expected<Patch> Equalize(const Patch& patch, const PatchPlace& place,
+                         const EqualizeOptions& options) {
+  options.Check();
+  constexpr double kMtf10OfGaussian = 0.341541100791;  // sqrt(ln 10 / 2) / pi
+  const double frequency = kMtf10OfGaussian / options.working_blur_sd_mm;
+  const double needed = 0.1 / options.max_gain;
+  const double shown = std::min(place.spread.along_x.Modulation(frequency),
+                                place.spread.along_y.Modulation(frequency));
+  if (shown < needed) {
+    return Unmeasurable(fmt::format(
+        "{}: the photo is blurrier than can be measured: detail of {:.2f} mm shows with {:.1f} % "
+        "of its contrast, at least {:.0f} % is needed; focus, hold the camera still, or go nearer "
+        "(there are {:.1f} pixels a mm).",
+        place.where, 1 / frequency, 100 * shown, 100 * needed, place.spread.px_per_mm));
+  }
+  const SeparableFilter filter =
+      DesignEqualizer(place.spread, patch.px_per_mm, options.working_blur_sd_mm, options.max_gain);
+  Patch equalized = patch;
+  equalized.relative = filter.Apply(patch.relative);
+  const cv::Mat field = patch.regions == static_cast<int>(Region::kField);
+  const double mean = cv::mean(equalized.relative, field)[0];
+  equalized.relative /= mean;
+  equalized.level = patch.level * mean;
+  equalized.blur_sd_mm = options.working_blur_sd_mm;
+  equalized.noise_sd = place.noise.RelativeSd(equalized.level * place.paper_light);
+  return equalized;
+}
+
+}  // namespace laygauge
