@@ -65,14 +65,11 @@ FlatReading Describe(const cv::Mat& filtered) {
   return {right[0] / n, std::max(0.0, squares - plane.dot(right)) / (n - 3)};
 }
 
-std::optional<FlatReading> ReadFlat(const Photo& photo, const View& view,
-                                    const SheetSharpness& sharpness, const FlatArea& area,
-                                    double working_sd_mm, double max_gain) {
-  const LocalSpread spread = sharpness.At(area.x_mm, area.y_mm, 0);
+std::optional<FlatReading> ReadFlat(const Photo& photo, const View& view, const FlatArea& area,
+                                    const SeparableFilter& filter, double px_per_mm) {
   const Eigen::Vector2d center = view.PixelFromSheet(area.x_mm, area.y_mm, 0);
-  const int half = static_cast<int>(area.half_mm * spread.px_per_mm);
+  const int half = static_cast<int>(area.half_mm * px_per_mm);
   if (half < 4) return std::nullopt;
-  const SeparableFilter filter = DesignEqualizer(spread, spread.px_per_mm, working_sd_mm, max_gain);
   int reach = 0;
   for (const auto& term : filter.terms) reach = std::max(reach, term.row.rows / 2);
   const int outer = half + reach;
@@ -111,10 +108,13 @@ PhotoNoise FitNoise(const std::vector<FlatReading>& readings) {
 Expected<PhotoNoise> MeasureNoise(const Photo& photo, const View& view,
                                   const SheetDescription& sheet, const SheetSharpness& sharpness,
                                   double working_sd_mm, double max_gain) {
+  // One filter for all: the spread at the sheet's middle.
+  const LocalSpread spread = sharpness.At(sheet.page_width_mm / 2, sheet.page_height_mm / 2, 0);
+  const SeparableFilter filter = DesignEqualizer(spread, spread.px_per_mm, working_sd_mm, max_gain);
   std::vector<FlatReading> readings;
   std::vector<double> relative;
   for (const FlatArea& area : FlatAreas(sheet)) {
-    const auto reading = ReadFlat(photo, view, sharpness, area, working_sd_mm, max_gain);
+    const auto reading = ReadFlat(photo, view, area, filter, spread.px_per_mm);
     // A clipped area has no noise to show.
     if (!reading || reading->variance <= 0 || reading->light > 0.98) continue;
     readings.push_back(*reading);

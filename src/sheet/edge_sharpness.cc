@@ -82,13 +82,7 @@ std::optional<std::string> FitStraightened(const EdgeSharpnessOptions& options, 
   if (std::abs(e->fit.offset_mm) > options.max_offset_mm) {
     return fmt::format("it lies {:.2f} mm off its place", e->fit.offset_mm);
   }
-  double squares = 0;
-  for (const EdgeSample& sample : e->strip.samples) {
-    const double modelled = std::clamp(e->fit.Value(sample.distance_mm), 0.0, 1.0);
-    squares += std::pow(sample.value - modelled, 2);
-  }
-  const double residual = std::sqrt(squares / static_cast<double>(e->strip.samples.size())) /
-                          (e->fit.bright - e->fit.dark);
+  const double residual = SampleScatter(e->strip.samples, e->fit, options.half_width_mm);
   if (!(residual <= options.max_residual)) {
     return fmt::format("it is dirty, covered or torn (scatter {:.0f} % of its contrast)",
                        100 * residual);
@@ -96,19 +90,15 @@ std::optional<std::string> FitStraightened(const EdgeSharpnessOptions& options, 
   return std::nullopt;
 }
 
-// Variance within bins of 0.1 mm, summed over the edges: small when the edges lie where assumed.
-double Scatter(const std::vector<EdgeStrip>& strips, double half_width_mm) {
-  double scatter = 0;
-  for (const EdgeStrip& strip : strips) {
-    const EdgeProfile profile = BinEdge(strip.samples, 0.1, half_width_mm);
-    double within = 0;
-    for (const EdgeSample& sample : strip.samples) within += sample.value * sample.value;
-    for (size_t bin = 0; bin < profile.size(); ++bin) {
-      within -= profile.count[bin] * profile.value[bin] * profile.value[bin];
-    }
-    scatter += within / static_cast<double>(strip.samples.size());
+// Variance within bins of 0.1 mm: small when the edge lies where assumed.
+double Scatter(const EdgeStrip& strip, double half_width_mm) {
+  const EdgeProfile profile = BinEdge(strip.samples, 0.1, half_width_mm);
+  double within = 0;
+  for (const EdgeSample& sample : strip.samples) within += sample.value * sample.value;
+  for (size_t bin = 0; bin < profile.size(); ++bin) {
+    within -= profile.count[bin] * profile.value[bin] * profile.value[bin];
   }
-  return scatter;
+  return within / static_cast<double>(strip.samples.size());
 }
 
 class Collector {
@@ -117,25 +107,24 @@ class Collector {
       : photo_(photo), view_(view), options_(options) {}
 
   void AddSquare(const std::string& target, const SharpnessSquare& square) {
-    std::vector<MeasuredEdge> best;
-    double best_scatter = std::numeric_limits<double>::infinity();
-    for (const double tilt_deg : {square.tilt_deg, -square.tilt_deg}) {
-      std::vector<EdgeStrip> strips;
-      std::vector<MeasuredEdge> candidates;
-      for (const KnownEdge& edge :
-           EdgesOfSquare(target, {square.x_mm, square.y_mm}, square.side_mm, tilt_deg)) {
-        auto strip = Read(edge);
-        if (!strip) return Skip(strip.error().message);
-        strips.push_back(*strip);
-        candidates.push_back({edge, std::move(*strip), {}, {}});
-      }
-      const double scatter = Scatter(strips, options_.half_width_mm);
-      if (scatter < best_scatter) {
-        best_scatter = scatter;
-        best = std::move(candidates);
+    const auto edges_with = [&](double tilt_deg) {
+      return EdgesOfSquare(target, {square.x_mm, square.y_mm}, square.side_mm, tilt_deg);
+    };
+    // One edge tells the tilt's sense.
+    auto given = Read(edges_with(square.tilt_deg).front());
+    auto other = Read(edges_with(-square.tilt_deg).front());
+    if (!given || !other) return Skip((given ? other : given).error().message);
+    const bool as_given =
+        Scatter(*given, options_.half_width_mm) <= Scatter(*other, options_.half_width_mm);
+    const auto known = edges_with(as_given ? square.tilt_deg : -square.tilt_deg);
+    AddIfUsable({known.front(), std::move(*(as_given ? given : other)), {}, {}});
+    for (size_t i = 1; i < known.size(); ++i) {
+      if (auto strip = Read(known[i])) {
+        AddIfUsable({known[i], std::move(*strip), {}, {}});
+      } else {
+        Skip(strip.error().message);
       }
     }
-    for (MeasuredEdge& edge : best) AddIfUsable(std::move(edge));
   }
 
   // `min_turn_deg`: edges nearer to the pixel rows or columns are left out.

@@ -184,36 +184,39 @@ EdgeFit GuessEdge(const EdgeProfile& profile, double pixel_mm) {
   return fit;
 }
 
-std::vector<double> ModulationTransfer(const EdgeProfile& profile, const EdgeFit& fit,
-                                       std::span<const double> cycles_per_mm) {
-  const size_t n = profile.size();
-  const double h = profile.bin_mm;
-  std::vector<double> edge(n);
-  for (size_t bin = 0; bin < n; ++bin) {
-    const double center = profile.Center(bin);
-    edge[bin] = fit.Value(center);
-    // Few samples do not spread evenly over their bin: carry their mean to its centre.
-    if (profile.count[bin] > 0) {
-      edge[bin] += profile.value[bin] - fit.Value(profile.distance_mm[bin]);
+namespace {
+
+// The windowed line spread of a profile, and its Fourier transform at any frequency.
+class LineSpectrum {
+ public:
+  LineSpectrum(const EdgeProfile& profile, const EdgeFit& fit) : step_mm_(profile.bin_mm) {
+    const size_t n = profile.size();
+    std::vector<double> edge(n);
+    for (size_t bin = 0; bin < n; ++bin) {
+      edge[bin] = fit.Value(profile.Center(bin));
+      // Few samples do not spread evenly over their bin: carry their mean to its centre.
+      if (profile.count[bin] > 0) {
+        edge[bin] += profile.value[bin] - fit.Value(profile.distance_mm[bin]);
+      }
+    }
+    const double half = static_cast<double>(n - 1) / 2 * step_mm_;
+    line_.assign(n, 0);
+    for (size_t bin = 1; bin + 1 < n; ++bin) {
+      const double away = std::abs(profile.Center(bin) - fit.offset_mm) / half;
+      const double window =
+          away < 0.5 ? 1.0
+                     : 0.5 + 0.5 * std::cos(2 * std::numbers::pi * (std::min(away, 1.0) - 0.5));
+      line_[bin] = window * (edge[bin + 1] - edge[bin - 1]);
+      total_ += line_[bin];
     }
   }
-  const double half = static_cast<double>(n - 1) / 2 * h;
-  std::vector<double> line(n, 0);
-  for (size_t bin = 1; bin + 1 < n; ++bin) {
-    const double away = std::abs(profile.Center(bin) - fit.offset_mm) / half;
-    const double window =
-        away < 0.5 ? 1.0 : 0.5 + 0.5 * std::cos(2 * std::numbers::pi * (std::min(away, 1.0) - 0.5));
-    line[bin] = window * (edge[bin + 1] - edge[bin - 1]);
-  }
-  double total = 0;
-  for (const double value : line) total += value;
-  std::vector<double> modulation;
-  modulation.reserve(cycles_per_mm.size());
-  for (const double f : cycles_per_mm) {
-    const std::complex<double> turn = std::polar(1.0, -2 * std::numbers::pi * f * h);
+
+  [[nodiscard]] double At(double cycles_per_mm) const {
+    const double f = cycles_per_mm * step_mm_;
+    const std::complex<double> turn = std::polar(1.0, -2 * std::numbers::pi * f);
     std::complex<double> phase = 1;
     std::complex<double> sum = 0;
-    for (const double value : line) {
+    for (const double value : line_) {
       sum += value * phase;
       phase *= turn;
     }
@@ -221,24 +224,37 @@ std::vector<double> ModulationTransfer(const EdgeProfile& profile, const EdgeFit
       const double t = std::numbers::pi * x;
       return x == 0 ? 1.0 : std::sin(t) / t;
     };
-    modulation.push_back(std::abs(sum / total) / (sinc(2 * f * h) * sinc(f * h)));
+    return std::abs(sum / total_) / (sinc(2 * f) * sinc(f));
   }
+
+ private:
+  double step_mm_;
+  std::vector<double> line_;
+  double total_ = 0;
+};
+
+}  // namespace
+
+std::vector<double> ModulationTransfer(const EdgeProfile& profile, const EdgeFit& fit,
+                                       std::span<const double> cycles_per_mm) {
+  const LineSpectrum spectrum(profile, fit);
+  std::vector<double> modulation;
+  modulation.reserve(cycles_per_mm.size());
+  for (const double f : cycles_per_mm) modulation.push_back(spectrum.At(f));
   return modulation;
 }
 
 double Mtf50(const EdgeProfile& profile, const EdgeFit& fit) {
-  // Bracketed upwards from the fit's own MTF50: there the curve falls steeply.
-  const auto transfer = [&](double f) {
-    return ModulationTransfer(profile, fit, std::span<const double>(&f, 1)).front();
-  };
+  // Bracketed from the fit's own MTF50, where the curve falls steeply.
+  const LineSpectrum spectrum(profile, fit);
   const double expected = fit.spread.Mtf50PerMm();
   double low = expected;
   double high = expected;
-  while (transfer(low) < 0.5 && low > expected / 8) low /= 1.2;
-  while (transfer(high) > 0.5 && high < expected * 8) high *= 1.2;
-  for (int step = 0; step < 20; ++step) {
+  while (spectrum.At(low) < 0.5 && low > expected / 8) low /= 1.1;
+  while (spectrum.At(high) > 0.5 && high < expected * 8) high *= 1.1;
+  for (int step = 0; step < 14; ++step) {
     const double middle = (low + high) / 2;
-    (transfer(middle) > 0.5 ? low : high) = middle;
+    (spectrum.At(middle) > 0.5 ? low : high) = middle;
   }
   return (low + high) / 2;
 }
@@ -261,34 +277,70 @@ Shoot MeasureShoot(const EdgeProfile& profile, const EdgeFit& fit) {
   return shoot;
 }
 
-void StraightenEdge(std::span<EdgeSample> samples, const EdgeFit& fit, double half_width_mm) {
-  // The curve as a table: thousands of samples, few distinct distances.
-  const double step = fit.spread.blur_sd_mm / 8;
-  const int half = static_cast<int>(std::ceil(half_width_mm / step)) + 1;
-  std::vector<double> curve;
-  for (int i = -half; i <= half; ++i) {
-    curve.push_back(std::clamp(fit.Value(fit.offset_mm + i * step), 0.0, 1.0));
+namespace {
+
+// A fit's clipped curve as a table: thousands of samples ask for few distinct distances.
+class EdgeCurve {
+ public:
+  EdgeCurve(const EdgeFit& fit, double half_width_mm)
+      : step_mm_(fit.spread.blur_sd_mm / 8),
+        first_mm_(-half_width_mm - step_mm_),
+        values_(static_cast<size_t>(2 * half_width_mm / step_mm_) + 4) {
+    for (size_t i = 0; i < values_.size(); ++i) {
+      values_[i] = std::clamp(fit.Value(first_mm_ + static_cast<double>(i) * step_mm_), 0.0, 1.0);
+    }
   }
+
+  struct Point {
+    double value = 0;
+    double slope = 0;  // a mm
+  };
+  [[nodiscard]] Point At(double distance_mm) const {
+    const double position = std::clamp((distance_mm - first_mm_) / step_mm_, 0.0,
+                                       static_cast<double>(values_.size()) - 1.001);
+    const auto i = static_cast<size_t>(position);
+    const double rise = values_[i + 1] - values_[i];
+    return {values_[i] + rise * (position - static_cast<double>(i)), rise / step_mm_};
+  }
+
+ private:
+  double step_mm_;
+  double first_mm_;
+  std::vector<double> values_;
+};
+
+}  // namespace
+
+double SampleScatter(std::span<const EdgeSample> samples, const EdgeFit& fit,
+                     double half_width_mm) {
+  const EdgeCurve curve(fit, half_width_mm);
+  double squares = 0;
+  for (const EdgeSample& sample : samples) {
+    const double miss = sample.value - curve.At(sample.distance_mm).value;
+    squares += miss * miss;
+  }
+  return std::sqrt(squares / static_cast<double>(samples.size())) / (fit.bright - fit.dark);
+}
+
+void StraightenEdge(std::span<EdgeSample> samples, const EdgeFit& fit, double half_width_mm) {
+  const EdgeCurve curve(fit, half_width_mm);
   Eigen::Matrix3d normal = Eigen::Matrix3d::Zero();
   Eigen::Vector3d right = Eigen::Vector3d::Zero();
+  const auto basis = [](const EdgeSample& sample) {
+    return Eigen::Vector3d(1, sample.along_mm, sample.along_mm * sample.along_mm);
+  };
   for (const EdgeSample& sample : samples) {
-    const double position = (sample.distance_mm - fit.offset_mm) / step + half;
-    if (position < 0 || position >= 2.0 * half) continue;
-    const auto i = static_cast<size_t>(position);
-    const double slope = (curve[i + 1] - curve[i]) / step;
-    const double modelled = curve[i] + slope * step * (position - static_cast<double>(i));
-    const Eigen::Vector3d basis(1, sample.along_mm, sample.along_mm * sample.along_mm);
-    normal += slope * slope * basis * basis.transpose();
-    right += slope * (sample.value - modelled) * basis;
+    const auto [value, slope] = curve.At(sample.distance_mm);
+    if (std::abs(slope) < 1e-6) continue;
+    const Eigen::Vector3d b = basis(sample);
+    normal += slope * slope * b * b.transpose();
+    right += slope * (sample.value - value) * b;
   }
-  // value ~ curve(distance + shift): the shift that the samples ask for, on a weak leash.
+  // value ~ curve(distance + shift): the shift that the samples ask for.
   normal.diagonal() *= 1 + 1e-9;
   const Eigen::Vector3d shift = normal.ldlt().solve(right);
   if (!shift.allFinite()) return;
-  for (EdgeSample& sample : samples) {
-    sample.distance_mm +=
-        shift.dot(Eigen::Vector3d(1, sample.along_mm, sample.along_mm * sample.along_mm));
-  }
+  for (EdgeSample& sample : samples) sample.distance_mm += shift.dot(basis(sample));
 }
 
 }  // namespace laygauge

@@ -74,6 +74,10 @@ struct Shoot {
 };
 [[nodiscard]] Shoot MeasureShoot(const EdgeProfile& profile, const EdgeFit& fit);
 
+// Root mean square of the samples' distances from the fit, over the contrast.
+[[nodiscard]] double SampleScatter(std::span<const EdgeSample> samples, const EdgeFit& fit,
+                                   double half_width_mm);
+
 // Moves each sample's distance by the polynomial of degree 2 in along_mm that brings it best onto
 // the fit's curve: an edge known to a fraction of a pixel is straightened to its own line.
 void StraightenEdge(std::span<EdgeSample> samples, const EdgeFit& fit, double half_width_mm);
