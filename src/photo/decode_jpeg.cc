@@ -113,8 +113,10 @@ Expected<cv::Mat> DecodeJpeg(std::string_view bytes, const std::string& file) {
   if (auto fits = CheckImageSize(reader.width(), reader.height(), file); !fits) {
     return tl::unexpected(fits.error());
   }
-  if (!reader.IsReadable())
-    return tl::unexpected(UnsupportedImage("a JPEG for print (CMYK)", file));
+  if (!reader.IsReadable()) {
+    return tl::unexpected(UnsupportedImage(
+        "a JPEG of other colours than gray, YCbCr or RGB (as CMYK, for print)", file));
+  }
   cv::Mat luma(reader.height(), reader.width(), CV_8UC1);
   if (!reader.ReadPixels(luma.data, luma.step)) {
     return tl::unexpected(DamagedImage("JPEG", reader.message(), file));
