@@ -3,6 +3,7 @@
 #include <fmt/format.h>
 
 #include <algorithm>
+#include <cmath>
 #include <opencv2/core.hpp>
 
 #include "coupon/equalizing_kernel.h"
@@ -19,14 +20,28 @@ void EqualizeOptions::Check() const {
   }
 }
 
+namespace {
+
+// The photo's spread, blurred once more by the rectification.
+LocalSpread SpreadOfPatch(const PatchPlace& place) {
+  LocalSpread spread = place.spread;
+  for (PointSpread* axis : {&spread.along_x, &spread.along_y}) {
+    axis->blur_sd_mm = std::hypot(axis->blur_sd_mm, place.resampling_sd_mm);
+  }
+  return spread;
+}
+
+}  // namespace
+
 Expected<Patch> Equalize(const Patch& patch, const PatchPlace& place,
                          const EqualizeOptions& options) {
   options.Check();
   constexpr double kMtf10OfGaussian = 0.341541100791;  // sqrt(ln 10 / 2) / pi
   const double frequency = kMtf10OfGaussian / options.working_blur_sd_mm;
   const double needed = 0.1 / options.max_gain;
-  const double shown = std::min(place.spread.along_x.Modulation(frequency),
-                                place.spread.along_y.Modulation(frequency));
+  const LocalSpread spread = SpreadOfPatch(place);
+  const double shown =
+      std::min(spread.along_x.Modulation(frequency), spread.along_y.Modulation(frequency));
   if (shown < needed) {
     return Unmeasurable(fmt::format(
         "{}: the photo is blurrier than can be measured: detail of {:.2f} mm shows with {:.1f} % "
@@ -35,7 +50,7 @@ Expected<Patch> Equalize(const Patch& patch, const PatchPlace& place,
         place.where, 1 / frequency, 100 * shown, 100 * needed, place.spread.px_per_mm));
   }
   const SeparableFilter filter =
-      DesignEqualizer(place.spread, patch.px_per_mm, options.working_blur_sd_mm, options.max_gain);
+      DesignEqualizer(spread, patch.px_per_mm, options.working_blur_sd_mm, options.max_gain);
   Patch equalized = patch;
   equalized.relative = filter.Apply(patch.relative);
   const cv::Mat field = patch.regions == static_cast<int>(Region::kField);

@@ -11,7 +11,7 @@ namespace laygauge {
 
 struct EqualizeOptions {
   // The resolution that all patches are brought to: a Gaussian point spread, standard deviation.
-  // 0.060 mm passes 45 % of a line pitch of 0.3 mm, 64 % of 0.4 mm, 90 % of 0.8 mm.
+  // 0.060 mm passes 45 % of a line pitch of 0.3 mm, 64 % of 0.4 mm, 89 % of 0.8 mm.
   double working_blur_sd_mm = 0.060;
   // Above 1, detail of a photo blurrier than that is amplified, with its noise, up to this.
   double max_gain = 2;
@@ -21,10 +21,11 @@ struct EqualizeOptions {
 
 // What the photo and the sheet tell about the place where a coupon lies.
 struct PatchPlace {
-  std::string where;       // for messages: "plate.jpg, well A1"
-  LocalSpread spread;      // SheetSharpness::At(x, y, turn)
-  double paper_light = 0;  // linear light of paper there: SheetSharpness::paper
-  PhotoNoise noise;        // MeasureNoise
+  std::string where;            // for messages: "plate.jpg, well A1"
+  LocalSpread spread;           // SheetSharpness::At(x, y, turn)
+  double paper_light = 0;       // linear light of paper there: SheetSharpness::paper
+  double resampling_sd_mm = 0;  // blur that rectification added, for a photo finer than the patch
+  PhotoNoise noise;             // MeasureNoise
 };
 
 // The patch at the working resolution: `relative` filtered (DesignEqualizer) and brought back to a
