@@ -117,6 +117,9 @@ Surface MakeSurface(const Patch& patch, const CouponDescription& coupon) {
   const double lay = surface.lines ? surface.lines->lay_deg : coupon.lay_deg.value_or(0);
   surface.aligned = AlignField(patch, lay);
   surface.aligned_half = HalveField(surface.aligned);
+  const auto pitch_mm =
+      surface.lines ? std::optional<double>(surface.lines->pitch_mm) : std::nullopt;
+  surface.valleys = FindLineValleys(surface.aligned, pitch_mm, patch.blur_sd_mm);
   return surface;
 }
 

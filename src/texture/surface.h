@@ -8,6 +8,7 @@
 #include "coupon/patch.h"
 #include "texture/field_spectrum.h"
 #include "texture/line_spectrum.h"
+#include "texture/line_valleys.h"
 
 namespace laygauge {
 
@@ -31,6 +32,7 @@ struct Surface {
   // The same at half the scale (10 px/mm), for measures of slopes and of gray levels: what a point
   // spread of 0.06 mm holds, with a quarter of the pixels and half the noise.
   AlignedField aligned_half;
+  LineValleys valleys;  // of `aligned`
 };
 
 // Finds the lines and turns the field. `patch` and `coupon` are kept by address: they must outlive

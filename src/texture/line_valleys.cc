@@ -1,0 +1,107 @@
+#include "texture/line_valleys.h"
+
+#include <algorithm>
+#include <cmath>
+#include <limits>
+
+#include "texture/channel_kernel.h"
+#include "texture/surface.h"
+
+namespace laygauge {
+namespace {
+
+constexpr double kStepMm = 0.25;
+constexpr double kMinSpacing = 0.45;  // of the pitch
+
+// Means over `step` columns of the field, one row a block; NaN where a pixel is off the field.
+cv::Mat BlockMeans(const AlignedField& field, int step) {
+  const int blocks = field.relative.cols / step;
+  cv::Mat means(field.relative.rows, blocks, CV_32FC1);
+  for (int y = 0; y < field.relative.rows; ++y) {
+    const auto* value = field.relative.ptr<float>(y);
+    const auto* region = field.regions.ptr<std::uint8_t>(y);
+    auto* mean = means.ptr<float>(y);
+    for (int block = 0; block < blocks; ++block, value += step, region += step) {
+      float sum = 0;
+      unsigned other = 0;
+      for (int i = 0; i < step; ++i) {
+        sum += value[i];
+        other |= region[i] ^ static_cast<unsigned>(Region::kField);
+      }
+      mean[block] =
+          other == 0 ? sum / static_cast<float>(step) : std::numeric_limits<float>::quiet_NaN();
+    }
+  }
+  return means.t();
+}
+
+struct Minimum {
+  int at = 0;
+  float value = 0;
+};
+
+// Minima of the profile, smoothed by 1 2 1; a lower one within `spacing_px` silences the others.
+// `smooth` and `minima` are scratch space.
+void FindMinima(const float* profile, int size, double spacing_px, std::vector<float>* smooth,
+                std::vector<Minimum>* minima) {
+  smooth->assign(static_cast<std::size_t>(size), std::numeric_limits<float>::quiet_NaN());
+  float* s = smooth->data();
+  for (int y = 1; y + 1 < size; ++y) {
+    s[y] = 0.25F * profile[y - 1] + 0.5F * profile[y] + 0.25F * profile[y + 1];
+  }
+  minima->clear();
+  constexpr int kRoom = ChannelKernel::kReach;
+  for (int y = kRoom; y + kRoom < size; ++y) {
+    if (!(s[y] < s[y - 1] && s[y] <= s[y + 1]) || std::isnan(profile[y - kRoom]) ||
+        std::isnan(profile[y + kRoom])) {
+      continue;
+    }
+    while (!minima->empty() && y - minima->back().at < spacing_px && s[y] < minima->back().value) {
+      minima->pop_back();
+    }
+    if (minima->empty() || y - minima->back().at >= spacing_px) {
+      minima->push_back({y, s[y]});
+    }
+  }
+}
+
+}  // namespace
+
+LineValleys FindLineValleys(const AlignedField& field, std::optional<double> pitch_mm,
+                            double blur_sd_mm) {
+  LineValleys found;
+  const int step = std::max(1, static_cast<int>(std::lround(kStepMm * field.px_per_mm)));
+  found.step_mm = step / field.px_per_mm;
+  found.length_mm = 2 * found.step_mm;
+  found.pitch_mm = pitch_mm.value_or(kUsualPitchMm);
+  found.column_step_px = step;
+  found.column0_px = step - 0.5;
+  if (field.relative.empty() || field.relative.cols < 2 * step) {
+    return found;
+  }
+  const cv::Mat blocks = BlockMeans(field, step);
+  found.profiles = 0.5 * (blocks.rowRange(0, blocks.rows - 1) + blocks.rowRange(1, blocks.rows));
+  const ChannelKernel kernel(ChannelSdMm(blur_sd_mm), 1 / field.px_per_mm);
+  const double spacing_px = kMinSpacing * found.pitch_mm * field.px_per_mm;
+  std::vector<float> smooth;
+  std::vector<Minimum> minima;
+  found.stations.resize(static_cast<std::size_t>(found.profiles.rows));
+  for (int station = 0; station < found.profiles.rows; ++station) {
+    const auto* profile = found.profiles.ptr<float>(station);
+    FindMinima(profile, found.profiles.cols, spacing_px, &smooth, &minima);
+    auto& valleys = found.stations[static_cast<std::size_t>(station)];
+    valleys.reserve(minima.size());
+    for (const Minimum& minimum : minima) {
+      const float* s = smooth.data() + minimum.at;
+      const float curvature = s[-1] - 2 * s[0] + s[1];
+      const float offset =
+          curvature > 0 ? std::clamp(0.5F * (s[-1] - s[1]) / curvature, -0.5F, 0.5F) : 0.0F;
+      const ChannelFit fit = kernel.Fit(profile + minimum.at, offset);
+      valleys.push_back(
+          {static_cast<float>(minimum.at) + offset, static_cast<float>(fit.darkness_um)});
+    }
+  }
+  return found;
+}
+
+}  // namespace laygauge

@@ -1,0 +1,298 @@
+#include "texture/wall_gaps.h"
+
+#include <algorithm>
+#include <cmath>
+#include <limits>
+#include <vector>
+
+#include "texture/channel_kernel.h"
+#include "texture/contour.h"
+
+namespace laygauge {
+namespace {
+
+constexpr double kStepMm = 0.25;    // along the seam
+constexpr double kSampleMm = 0.05;  // across it
+constexpr double kSideMm = 0.083;   // profiles are means of three, this far apart along the seam
+constexpr double kCornerMm = 2;     // of the outline, left out
+constexpr int kSmooth = 4;          // stations on either side, for what changes slowly
+
+// Depths from the contour, mm, relative to the seam at wall_mm.
+constexpr double kWallTopMm = -0.25;  // the inner loop's middle
+constexpr double kSearchMm = 0.3;     // the seam's centre lies this near
+constexpr double kFieldMm = 0.55;     // beyond, lines lie undisturbed
+constexpr double kDeepestMm = 1.5;
+
+// An open seam is darker than the closed groove between the wall's loops by kOpener and dark in
+// itself, and takes more light than a closed one could (sample plates; docs/metrics.md).
+constexpr double kOpener = 0.18;
+constexpr double kMinDepth = 0.27;
+constexpr double kMinDarknessMm = 0.040;
+// White walls light each other, which brightens an open seam: the limits shrink above this
+// reflectance as the darkness of gaps does (gaps.cc).
+double LimitsScale(double level) {
+  constexpr double kInterreflection = 0.63;
+  constexpr double kGray = 0.4;
+  return std::min(1.0, (1 - kInterreflection * level) / (1 - kInterreflection * kGray));
+}
+
+constexpr double kMinOpenMm = 1.25;  // length of an open piece
+
+struct Station {
+  std::vector<float> profile;  // reflectance by depth, NaN where the patch ends
+  double wall = 0;
+  double field = 0;
+  double groove = 0;  // darkest share of light missing in the groove between the loops
+  bool open = false;
+  double width_mm = 0;
+  double seam_depth_mm = 0;
+};
+
+struct Seam {
+  Contour contour;
+  std::vector<Station> stations;
+};
+
+// Depths of a profile's samples.
+struct Depths {
+  double first_mm = 0;
+  int count = 0;
+  [[nodiscard]] int At(double depth_mm) const {
+    return std::clamp(static_cast<int>(std::lround((depth_mm - first_mm) / kSampleMm)), 0,
+                      count - 1);
+  }
+  [[nodiscard]] double Mm(double sample) const { return first_mm + sample * kSampleMm; }
+};
+
+std::vector<float> ProfileAt(const Patch& patch, const ContourPoint& at, const Depths& depths) {
+  std::vector<float> profile(static_cast<std::size_t>(depths.count));
+  const cv::Point2d along(-at.inward.y, at.inward.x);
+  for (int i = 0; i < depths.count; ++i) {
+    const cv::Point2d centre = at.point_mm + depths.Mm(i) * at.inward;
+    float sum = 0;
+    for (const double side : {-kSideMm, 0.0, kSideMm}) {
+      sum += SampleBilinear(patch.relative, patch.PixelFromCoupon(centre + side * along));
+    }
+    profile[static_cast<std::size_t>(i)] = sum / 3;
+  }
+  return profile;
+}
+
+// The level of flat line tops: 65 % of the samples are darker (valleys and their flanks).
+double FieldLevel(const std::vector<float>& profile, int from) {
+  std::vector<float> part(profile.begin() + from, profile.end());
+  auto place = part.begin() + static_cast<std::ptrdiff_t>(part.size() * 65 / 100);
+  std::nth_element(part.begin(), place, part.end());
+  return *place;
+}
+
+// Mean over neighbours along the contour of what `value` gives for a station.
+template <class Value>
+std::vector<double> Smoothed(const Seam& seam, const Value& value) {
+  const int count = static_cast<int>(seam.stations.size());
+  std::vector<double> means;
+  for (int i = 0; i < count; ++i) {
+    double sum = 0;
+    for (int k = i - kSmooth; k <= i + kSmooth; ++k) {
+      const int at = seam.contour.closed ? (k + count) % count : std::clamp(k, 0, count - 1);
+      sum += value(seam.stations[static_cast<std::size_t>(at)]);
+    }
+    means.push_back(sum / (2 * kSmooth + 1));
+  }
+  return means;
+}
+
+// Share of the light missing at the groove between the loops, below its neighbourhood's level.
+double GrooveDepth(const Station& station, const Depths& depths, double wall_mm) {
+  const auto at = [&](double depth_mm) {
+    return static_cast<double>(station.profile[static_cast<std::size_t>(depths.At(depth_mm))]);
+  };
+  const double level = (at(wall_mm / 2 - 0.2) + at(wall_mm / 2 + 0.2)) / 2;
+  double sum = 0;
+  constexpr double kHalfMm = 0.05;
+  for (const double offset : {-kHalfMm, 0.0, kHalfMm}) {
+    sum += at(wall_mm / 2 + offset);
+  }
+  return 1 - sum / 3 / std::max(level, 1e-6);
+}
+
+// First place from `peak` on in direction `step` where the darkness falls to `half`, in samples.
+double Crossing(const std::vector<double>& dark, int peak, int step, double half) {
+  int i = peak;
+  const int last = step > 0 ? static_cast<int>(dark.size()) - 1 : 0;
+  while (i != last && dark[static_cast<std::size_t>(i + step)] > half) {
+    i += step;
+  }
+  if (i == last) {
+    return i;
+  }
+  const double inside = dark[static_cast<std::size_t>(i)];
+  const double outside = dark[static_cast<std::size_t>(i + step)];
+  return i + step * (inside - half) / (inside - outside);
+}
+
+void JudgeStation(Station* station, const Depths& depths, double wall_mm, double closed_width_mm,
+                  double scale) {
+  std::vector<double> dark;
+  const int from = depths.At(wall_mm - 0.2);
+  const int to = depths.At(wall_mm + 0.5);
+  for (int i = from; i <= to; ++i) {
+    const double blend = std::clamp((depths.Mm(i) - wall_mm + 0.15) / 0.4, 0.0, 1.0);
+    const double level = station->wall + blend * (station->field - station->wall);
+    dark.push_back(1 - station->profile[static_cast<std::size_t>(i)] / std::max(level, 1e-6));
+  }
+  const int first = depths.At(wall_mm - kSearchMm / 3) - from;
+  const int last = depths.At(wall_mm + kSearchMm) - from;
+  const auto peak = static_cast<int>(
+      std::max_element(dark.begin() + first, dark.begin() + last + 1) - dark.begin());
+  const double depth = dark[static_cast<std::size_t>(peak)];
+  if (!(depth > scale * kMinDepth) || depth - station->groove < scale * kOpener) {
+    return;
+  }
+  double area_mm = 0;
+  const int end = static_cast<int>(dark.size());
+  for (int i = peak; i < end && dark[static_cast<std::size_t>(i)] > 0.1 * depth; ++i) {
+    area_mm += dark[static_cast<std::size_t>(i)] * kSampleMm;
+  }
+  for (int i = peak - 1; i >= 0 && dark[static_cast<std::size_t>(i)] > 0.1 * depth; --i) {
+    area_mm += dark[static_cast<std::size_t>(i)] * kSampleMm;
+  }
+  if (area_mm < scale * kMinDarknessMm) {
+    return;
+  }
+  const double low = Crossing(dark, peak, -1, depth / 2);
+  const double high = Crossing(dark, peak, 1, depth / 2);
+  const double seen_mm = (high - low) * kSampleMm;
+  station->open = true;
+  station->width_mm =
+      std::sqrt(std::max(0.0, seen_mm * seen_mm - closed_width_mm * closed_width_mm));
+  station->seam_depth_mm = depths.Mm(from + (low + high) / 2);
+}
+
+Seam JudgeSeam(const Patch& patch, const Contour& contour, const Depths& depths, double wall_mm) {
+  Seam seam{contour, {}};
+  for (const ContourPoint& at : contour.points) {
+    Station station;
+    station.profile = ProfileAt(patch, at, depths);
+    if (std::isnan(station.profile.front()) || std::isnan(station.profile.back())) {
+      return {contour, {}};
+    }
+    station.wall = station.profile[static_cast<std::size_t>(depths.At(wall_mm + kWallTopMm))];
+    station.field = FieldLevel(station.profile, depths.At(wall_mm + kFieldMm));
+    station.groove = GrooveDepth(station, depths, wall_mm);
+    seam.stations.push_back(std::move(station));
+  }
+  const auto wall = Smoothed(seam, [](const Station& s) { return s.wall; });
+  const auto field = Smoothed(seam, [](const Station& s) { return s.field; });
+  const auto groove = Smoothed(seam, [](const Station& s) { return s.groove; });
+  constexpr double kHalfHeightWidths = 2.3548;  // of a Gaussian, in standard deviations
+  const double closed_width_mm = kHalfHeightWidths * ChannelSdMm(patch.blur_sd_mm);
+  for (std::size_t i = 0; i < seam.stations.size(); ++i) {
+    seam.stations[i].wall = wall[i];
+    seam.stations[i].field = field[i];
+    seam.stations[i].groove = std::clamp(groove[i], -0.05, 0.4);
+    JudgeStation(&seam.stations[i], depths, wall_mm, closed_width_mm, LimitsScale(patch.level));
+  }
+  return seam;
+}
+
+// Open pieces shorter than kMinOpenMm are taken for the valleys of lines that end at the wall.
+// Marks the others.
+void KeepPieces(Seam* seam, std::vector<Mark>* marks) {
+  auto& stations = seam->stations;
+  for (std::size_t i = 0; i < stations.size();) {
+    std::size_t end = i;
+    while (end < stations.size() && stations[end].open) {
+      ++end;
+    }
+    const double length_mm = static_cast<double>(end - i) * seam->contour.step_mm;
+    if (end > i && length_mm < kMinOpenMm) {
+      for (std::size_t k = i; k < end; ++k) {
+        stations[k].open = false;
+      }
+    } else if (end > i) {
+      Mark mark;
+      mark.kind = MarkKind::kWallGap;
+      for (std::size_t k = i; k < end; ++k) {
+        const ContourPoint& at = seam->contour.points[k];
+        mark.path_mm.emplace_back(at.point_mm + stations[k].seam_depth_mm * at.inward);
+        mark.width_mm += stations[k].width_mm / static_cast<double>(end - i);
+      }
+      marks->push_back(std::move(mark));
+    }
+    i = std::max(end, i + 1);
+  }
+}
+
+struct Total {
+  double length_mm = 0;
+  double open_mm = 0;
+  double width_mm2 = 0;  // widths times lengths
+  double width_squares = 0;
+  int pieces = 0;
+};
+
+Total Sum(const std::vector<Seam>& seams) {
+  Total total;
+  for (const Seam& seam : seams) {
+    bool before = false;
+    for (const Station& station : seam.stations) {
+      total.length_mm += seam.contour.step_mm;
+      if (station.open) {
+        total.open_mm += seam.contour.step_mm;
+        total.width_mm2 += station.width_mm * seam.contour.step_mm;
+        total.width_squares += station.width_mm * station.width_mm * seam.contour.step_mm;
+        total.pieces += before ? 0 : 1;
+      }
+      before = station.open;
+    }
+  }
+  return total;
+}
+
+Finding MeasureWallGaps(const Surface& surface) {
+  const Patch& patch = *surface.patch;
+  const double wall_mm = surface.coupon->wall_mm;
+  Finding finding;
+  Depths depths{std::max(0.05, wall_mm / 2 - 0.25), 0};
+  depths.count =
+      static_cast<int>(std::lround((wall_mm + kDeepestMm - depths.first_mm) / kSampleMm)) + 1;
+  std::vector<Seam> seams;
+  for (const Contour& contour : SampleContours(*surface.coupon, kStepMm, wall_mm, kCornerMm)) {
+    seams.push_back(JudgeSeam(patch, contour, depths, wall_mm));
+    KeepPieces(&seams.back(), &finding.marks);
+  }
+  const Total total = Sum(seams);
+  if (!(total.length_mm > 0) || !(wall_mm > 0.3)) {
+    const Feature none{std::nullopt, std::nullopt,
+                       "The coupon's walls do not lie wholly in its picture, or its description "
+                       "gives no wall_mm: no seam to judge."};
+    finding.features.assign(3, none);
+    return finding;
+  }
+  const double share = total.open_mm / total.length_mm;
+  // Open and closed alternate in pieces: their number says how well the share is known.
+  const double share_sd = std::sqrt(std::max(share * (1 - share), 0.01) / (total.pieces + 1.0));
+  const double width_mm = total.open_mm > 0 ? total.width_mm2 / total.open_mm : 0;
+  const double variance =
+      total.open_mm > 0 ? total.width_squares / total.open_mm - width_mm * width_mm : 0;
+  const double width_sd = std::sqrt(std::max(0.0, variance) / std::max(1, total.pieces));
+  finding.features = {
+      {100 * share, 100 * share_sd, ""},
+      {width_mm, std::max(width_sd, 0.005), ""},
+      {share * width_mm, std::hypot(share_sd * width_mm, share * std::max(width_sd, 0.005)), ""}};
+  return finding;
+}
+
+}  // namespace
+
+Metric WallGapsMetric() {
+  return {"wall_gaps",
+          1,
+          {{"wall_gap_pct", "share of the seam between field and walls that is open"},
+           {"wall_gap_mm", "mean width of the open parts, 0 where none is"},
+           {"wall_gap_mean_mm", "width averaged over the whole seam"}},
+          &MeasureWallGaps};
+}
+
+}  // namespace laygauge
