@@ -21,7 +21,7 @@ constexpr double kProbeHighUm = 30;
 constexpr double kOpenDarkness = 0.9;
 
 constexpr double kMinOpenUm = 4;       // of a channel's every part
-constexpr double kMinWidestUm = 8;    // of its widest part: twice what noise of the sample
+constexpr double kMinWidestUm = 8;     // of its widest part: twice what noise of the sample
                                        // plates makes of a closed valley
 constexpr double kMinLengthMm = 0.75;  // a scar or a grain of noise is shorter along the lay
 constexpr double kLinkMm = 0.1;        // across the lay, from station to station
@@ -104,8 +104,8 @@ Tiles MeasureTiles(const std::vector<Channel>& channels, const LineValleys& vall
   const int stations = valleys.profiles.rows;
   const int rows = valleys.profiles.cols;
   const auto tile = [&](int station, int row) -> Tile& {
-    return tiles[static_cast<std::size_t>(row * kTiles / rows * kTiles +
-                                          station * kTiles / stations)];
+    const int index = row * kTiles / rows * kTiles + station * kTiles / stations;
+    return tiles[static_cast<std::size_t>(index)];
   };
   for (int station = 0; station < stations; ++station) {
     const auto* profile = valleys.profiles.ptr<float>(station);

@@ -86,11 +86,14 @@ GrooveShading MeasureGrooveShading(const Patch& patch, const CouponDescription& 
   const double lay = lay_deg * std::numbers::pi / 180;
   const cv::Point2d across(std::sin(lay), std::cos(lay));
   const double depth_mm = coupon.wall_mm / 2;
+  if (depth_mm < kReach * kSampleMm / 2) {
+    return {};  // no second loop
+  }
   const std::vector<Contour> contours = SampleContours(coupon, kStepMm, depth_mm, kCornerMm);
-  double weight = 0;
-  Profile profile{};
-  for (double width_deg = kWidthDeg; width_deg < 100; width_deg *= 2) {
-    profile = MeanProfile(patch, contours, depth_mm, across, width_deg, &weight);
+  double width_deg = kWidthDeg;
+  for (int attempt = 0; attempt < 4; ++attempt, width_deg *= 2) {
+    double weight = 0;
+    const Profile profile = MeanProfile(patch, contours, depth_mm, across, width_deg, &weight);
     if (weight >= kEnough) {
       return FitGroove(profile, ChannelSdMm(patch.blur_sd_mm));
     }

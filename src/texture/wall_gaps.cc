@@ -116,19 +116,20 @@ double GrooveDepth(const Station& station, const Depths& depths, double wall_mm)
   return 1 - sum / 3 / std::max(level, 1e-6);
 }
 
-// First place from `peak` on in direction `step` where the darkness falls to `half`, in samples.
+// Where the darkness falls to `half` from `peak` on, in samples; `step` is 1 or -1.
 double Crossing(const std::vector<double>& dark, int peak, int step, double half) {
-  int i = peak;
-  const int last = step > 0 ? static_cast<int>(dark.size()) - 1 : 0;
-  while (i != last && dark[static_cast<std::size_t>(i + step)] > half) {
-    i += step;
+  const int end = step > 0 ? static_cast<int>(dark.size()) : -1;
+  double inside = dark[static_cast<std::size_t>(peak)];
+  int i = peak + step;
+  for (; i != end; i += step) {
+    const auto at = static_cast<std::size_t>(i);
+    const double outside = dark[at];
+    if (outside <= half) {
+      return i - step * (half - outside) / (inside - outside);
+    }
+    inside = outside;
   }
-  if (i == last) {
-    return i;
-  }
-  const double inside = dark[static_cast<std::size_t>(i)];
-  const double outside = dark[static_cast<std::size_t>(i + step)];
-  return i + step * (inside - half) / (inside - outside);
+  return i - step;
 }
 
 void JudgeStation(Station* station, const Depths& depths, double wall_mm, double closed_width_mm,

@@ -34,6 +34,11 @@ Patch RenderChannels(const ChannelsToRender& channels) {
       const double across = AcrossLay(p, channels.lay_deg);
       const int nearest = static_cast<int>(std::lround(across / channels.pitch_mm));
       double value = 1;
+      const auto region = static_cast<Region>(patch.regions.at<std::uint8_t>(y, x));
+      if (region != Region::kField && region != Region::kMargin) {
+        patch.relative.at<float>(y, x) = static_cast<float>(1 + channels.noise_sd * normal(random));
+        continue;
+      }
       if (channels.top) {
         value = channels.top(static_cast<int>(std::floor(across / channels.pitch_mm)), along);
       }

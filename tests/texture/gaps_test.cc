@@ -41,12 +41,13 @@ TEST(Gaps, FlowBelowOneLeavesItsShareOpen) {
                           }});
       const Finding gaps = Measure(patch, lay);
       const double want_pct = 100 * (1 - flow);
-      // The figure that the metric promises: 0.5 percentage points or 25 % of the value. Sharp
-      // boxes look up to 9 % lighter than the rounded channels that the fit expects.
-      EXPECT_NEAR(*gaps.features[kArea].value, want_pct, std::max(0.5, 0.15 * want_pct))
+      // Sharp boxes look up to 9 % darker or lighter than the rounded channels that the fit
+      // expects (channel_kernel_test), closed part and all.
+      const double tolerance_mm = 0.09 * DarknessMm((1 - flow) * pitch_mm) / kOpenDarkness;
+      EXPECT_NEAR(*gaps.features[kArea].value, want_pct, 100 * tolerance_mm / pitch_mm)
           << lay << " " << flow;
       ASSERT_TRUE(gaps.features[kArea].sd.has_value());
-      EXPECT_LT(*gaps.features[kArea].sd, 0.1);  // every tile is alike
+      EXPECT_LT(*gaps.features[kArea].sd, 0.15);  // tiles differ by where their edges cut lines
     }
   }
 }

@@ -2,8 +2,9 @@
 
 #include <gtest/gtest.h>
 
+#include <array>
 #include <cmath>
-#include <map>
+#include <numbers>
 #include <random>
 
 #include "support/render_channels.h"
@@ -18,38 +19,60 @@ Finding Measure(const Patch& patch) {
   return RidgesMetric().measure(MakeSurface(patch, coupon));
 }
 
-// Random by line, smooth along it (a random wave of 4 mm), standard deviation 1.
-double Random(int line, double along_mm, unsigned seed) {
-  std::mt19937 random(static_cast<unsigned>(line + 1000) * 7919U + seed);
-  const double phase = std::uniform_real_distribution<double>(0, 6.283185)(random);
-  const double length_mm = std::uniform_real_distribution<double>(3, 5)(random);
-  return std::sqrt(2.0) * std::cos(phase + 6.283185 * along_mm / length_mm);
-}
+// Random by line, smooth along it (a wave of 3 to 5 mm), standard deviation 1.
+class LineWaves {
+ public:
+  explicit LineWaves(unsigned seed) {
+    std::mt19937 random(seed);
+    std::uniform_real_distribution<double> phase(0, 2 * std::numbers::pi);
+    std::uniform_real_distribution<double> length_mm(3, 5);
+    for (Wave& wave : waves_) {
+      wave = {phase(random), 2 * std::numbers::pi / length_mm(random)};
+    }
+  }
+  double operator()(int line, double along_mm) const {
+    const Wave& wave = waves_[static_cast<std::size_t>(line + 100)];
+    return std::numbers::sqrt2 * std::cos(wave.phase + wave.per_mm * along_mm);
+  }
+
+ private:
+  struct Wave {
+    double phase = 0;
+    double per_mm = 0;
+  };
+  std::array<Wave, 200> waves_;
+};
 
 // Ridges fill some valleys, deepen others and make line tops uneven.
 Patch Ridged(double darkness_sd_mm, double top_sd) {
+  const LineWaves valleys(1);
+  const LineWaves tops(2);
   return RenderChannels(
       {.pitch_mm = 0.45,
        .noise_sd = 0.01,
        .darkness_mm =
-           [=](int line, double along) {
-             return std::max(0.0, 0.02 + darkness_sd_mm * Random(line, along, 1));
+           [&](int line, double along) {
+             return std::max(0.0, 0.01 + darkness_sd_mm * valleys(line, along));
            },
-       .top = [=](int line, double along) { return 1 + top_sd * Random(line, along, 2); }});
+       .top = [&](int line, double along) { return 1 + top_sd * tops(line, along); }});
 }
 
 TEST(Ridges, GrowWithTheirHeight) {
-  const double low = *Measure(Ridged(0.005, 0.01)).features[0].value;
-  const double high = *Measure(Ridged(0.010, 0.02)).features[0].value;
+  const double low = *Measure(Ridged(0.0025, 0.01)).features[0].value;
+  const double high = *Measure(Ridged(0.005, 0.02)).features[0].value;
   // The mean of two neighbours' darkness varies by its sd over root 2; 7 um of height for each um
-  // (docs/metrics.md). Averaging over 0.5 mm of a wave of 3 to 5 mm takes 2 to 5 %.
-  EXPECT_NEAR(low, 7 * 5 / std::sqrt(2.0), 0.15 * low);
-  EXPECT_NEAR(high / low, 2, 0.25);
+  // (docs/metrics.md). Of waves 3 to 5 mm long, means over 0.5 mm keep 0.97 and the covariance at
+  // 0.5 mm, mean cos(2 pi 0.5 / length) = 0.70, keeps its root, 0.84.
+  const double want = 7 * 2.5 / std::sqrt(2.0) * 0.97 * 0.84;
+  // A tile of 3 mm takes off its mean (over six lines: 3 % of a wave's sd), and one of 1700 pieces
+  // in a field of 80 independent waves scatters by 1 / sqrt(160), 8 %.
+  EXPECT_NEAR(low, want, 0.12 * want);
+  EXPECT_NEAR(high, 2 * want, 2 * 0.12 * want);
 }
 
 TEST(Ridges, WanderingLinesAreNone) {
   // The same valleys, but even tops: lines that lie nearer and further apart.
-  EXPECT_EQ(*Measure(Ridged(0.010, 0)).features[0].value, 0);
+  EXPECT_EQ(*Measure(Ridged(0.005, 0)).features[0].value, 0);
 }
 
 TEST(Ridges, EvenLinesAreNone) {

@@ -21,14 +21,11 @@ Finding Measure(const Patch& patch) {
 
 // A dark seam of Gaussian section, 1 mm inside the upper edge, from x = -10 mm to `end_mm`.
 Patch WithSeam(double depth, double sd_mm, double end_mm, double level = 0.4) {
-  Patch patch = RenderChannels({.level = level, .darkness_mm = [](int, double) { return 0.02; }});
+  Patch patch = RenderChannels({.level = level, .darkness_mm = [](int, double) { return 0.0; }});
   for (int y = 0; y < patch.relative.rows; ++y) {
     for (int x = 0; x < patch.relative.cols; ++x) {
       const cv::Point2d p = patch.CouponFromPixel({static_cast<double>(x), static_cast<double>(y)});
       float& value = patch.relative.at<float>(y, x);
-      if (p.y < -19.2) {
-        value = 1;  // the wall's loop: smooth
-      }
       if (p.x > -10 && p.x < end_mm) {
         const double z = (p.y + 19.0) / sd_mm;
         value *= static_cast<float>(1 - depth * std::exp(-z * z / 2));
@@ -46,11 +43,12 @@ TEST(WallGaps, MeasureShareAndWidthOfAnOpenSeam) {
     const Finding walls = Measure(WithSeam(0.6, sd_mm, 6));
     // 16 mm are open; either end is known to a step of 0.25 mm.
     EXPECT_NEAR(*walls.features[kShare].value, 100 * 16 / SeamMm(), 100 * 0.5 / SeamMm()) << sd_mm;
-    // Width at half depth, less in quadrature that of a closed seam. Sampled every 0.05 mm, the
-    // half depth lies on a straight line between samples: within 0.01 mm.
+    // Width at half depth, less in quadrature that of a closed seam. Samples 0.05 mm apart miss
+    // the deepest point by up to 0.025 mm, which widens the narrowest by 0.004 mm, and bilinear
+    // interpolation blurs it by 0.018 mm (0.005 mm); the quadrature doubles both.
     const double want =
         kHalfHeightWidths * std::sqrt(sd_mm * sd_mm - std::pow(ChannelSdMm(0.06), 2));
-    EXPECT_NEAR(*walls.features[kWidth].value, want, 0.015) << sd_mm;
+    EXPECT_NEAR(*walls.features[kWidth].value, want, 0.02) << sd_mm;
     ASSERT_EQ(walls.marks.size(), 1U);
     EXPECT_EQ(walls.marks[0].kind, MarkKind::kWallGap);
     for (const cv::Point2f& p : walls.marks[0].path_mm) {
@@ -68,7 +66,7 @@ TEST(WallGaps, AClosedSeamHasNone) {
 }
 
 TEST(WallGaps, ShortDarkSpotsAreTheEndsOfLines) {
-  EXPECT_EQ(*Measure(WithSeam(0.6, 0.08, -9)).features[kShare].value, 0);  // 1 mm
+  EXPECT_EQ(*Measure(WithSeam(0.6, 0.08, -9.3)).features[kShare].value, 0);  // 0.7 mm
 }
 
 // In white plastic an open seam is lighter: what is too light in gray counts in white.
