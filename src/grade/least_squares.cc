@@ -24,9 +24,11 @@ VectorXd Solve(const MatrixXd& design, const VectorXd& values) {
   return solution.cwiseQuotient(lengths);
 }
 
-// The columns for which `passive` is set.
-MatrixXd Columns(const MatrixXd& design, const std::vector<Index>& passive) {
-  return design(Eigen::all, passive);
+MatrixXd Columns(const MatrixXd& design, const std::vector<Index>& which) {
+  MatrixXd columns(design.rows(), static_cast<Index>(which.size()));
+  for (size_t i = 0; i < which.size(); ++i)
+    columns.col(static_cast<Index>(i)) = design.col(which[i]);
+  return columns;
 }
 
 // One state of the active-set method.
@@ -140,6 +142,12 @@ Expected<LeastSquaresFit> FitLeastSquares(const MatrixXd& design, const VectorXd
 
 NonNegativeFit FitNonNegative(const MatrixXd& design, const VectorXd& values,
                               const std::vector<bool>& bounded) {
+  const VectorXd unbounded = Solve(design, values);
+  bool feasible = true;
+  for (Index j = 0; j < design.cols(); ++j) {
+    feasible = feasible && (!bounded[static_cast<size_t>(j)] || unbounded[j] >= 0);
+  }
+  if (feasible) return {unbounded, (design * unbounded - values).norm()};  // no bound is active
   ActiveSet set(design, values, bounded);
   // Each round lowers the residual, so no set comes twice; rounding could cycle, hence the limit.
   for (Index round = 0; round < 3 * design.cols() && set.FreeBestColumn(); ++round) {

@@ -31,7 +31,7 @@ std::string OutsideText(const FeatureRange& range, double value) {
 void AddMissing(const ScaleTerm& term, Eigen::Index index, DefectSum& sum) {
   if (term.when_missing != WhenMissing::kTypical) return;
   sum.terms[index] = term.typical_term;
-  sum.feature_variance += std::pow(term.weight * term.typical_sd, 2);
+  sum.unknown_variance += std::pow(term.weight * term.typical_sd, 2);
 }
 
 void AddMeasured(const ScaleTerm& term, Eigen::Index index, const FeatureValue& feature,
@@ -45,7 +45,7 @@ void AddMeasured(const ScaleTerm& term, Eigen::Index index, const FeatureValue& 
   // Nobody graded so far out: the whole step beyond the range is in doubt.
   const double edge = std::clamp(value, term.range.low, term.range.high);
   const double step = sum.terms[index] - term.transform(edge);
-  sum.outside_variance += std::pow(term.weight * step, 2);
+  sum.unknown_variance += std::pow(term.weight * step, 2);
   sum.outside_share = std::max(sum.outside_share, share);
   sum.unfamiliar.push_back(OutsideText(term.range, value));
 }
@@ -57,6 +57,18 @@ Expected<FeatureValue> Find(const FeatureTable& features, const std::string& nam
       "the scale needs the feature {}, which these results do not have; measure the photos again "
       "with this program, or score them with a scale made from such results",
       name));
+}
+
+double DeviationOf(const Scale& scale, const DefectSum& sum) {
+  const double slope = ScoreSlope(sum.sum);
+  const double panel_variance = scale.grader_sd * scale.grader_sd / scale.panel;
+  // Out of the graded range the residual itself is less sure: one width out doubles it.
+  const double residual = scale.residual_sd * (1 + std::min(sum.outside_share, 2.0));
+  const double coupon_variance = std::max(residual * residual - panel_variance, 0.0);
+  const double photo_variance = slope * slope * sum.feature_variance;
+  const double known_variance = std::max(sum.weight_variance, 0.0) + sum.unknown_variance;
+  return std::sqrt(slope * slope * known_variance + panel_variance +
+                   std::max(photo_variance, coupon_variance));
 }
 
 }  // namespace
@@ -100,12 +112,7 @@ Expected<Score> ScoreCoupon(const Scale& scale, const FeatureTable& features) {
   if (!sum) return tl::unexpected(sum.error());
   Score score;
   score.value = ScoreOfDefects(sum->sum);
-  const double slope = ScoreSlope(sum->sum);
-  const double defects_variance =
-      std::max(sum->weight_variance, 0.0) + sum->feature_variance + sum->outside_variance;
-  // Out of the graded range the residual itself is less sure: one width out doubles it.
-  const double residual = scale.residual_sd * (1 + std::min(sum->outside_share, 2.0));
-  score.sd = std::sqrt(slope * slope * defects_variance + residual * residual);
+  score.sd = DeviationOf(scale, *sum);
   score.unfamiliar = sum->unfamiliar;
 
   std::map<std::string, double> shares;

@@ -66,8 +66,8 @@ struct ScaleTerm {
 struct GradedCoupon {
   std::string batch;
   std::string well;
-  double grade = 0;  // mean of the graders, each one's strictness taken off
-  double score = 0;  // what the scale says
+  std::optional<double> grade;  // the graders' mean, their strictness off; none: only compared
+  double score = 0;             // what the scale says
 };
 
 // Figures of the calibration, as it found them by leaving coupons out (docs/scale.md).
@@ -90,12 +90,13 @@ struct Scale {
   std::vector<ScaleTerm> terms;
   Eigen::MatrixXd covariance;         // of the weights, terms x terms
   std::vector<FeatureRange> watched;  // not in the score; only their ranges are heeded
-  double residual_sd = 0;             // points: a coupon's grade about its score, weights known
+  double residual_sd = 0;             // points: a panel's mean about the score, weights known
   double grader_sd = 0;               // points: one grade of a steady grader about his own mean
   double strictness_sd = 0;           // points: between graders
   int panel = 1;                      // the number of graders whose mean `Score::sd` is meant for
   std::vector<GradedCoupon> coupons;
   std::vector<ScaleAccuracy> accuracy;
+  std::vector<std::string> report;  // what the calibration told, line by line
 };
 
 // D, with the parts of its uncertainty; for the fit and for suggestions.
@@ -104,7 +105,7 @@ struct DefectSum {
   double sum = 0;               // D
   double weight_variance = 0;   // of D, by the weights' covariance
   double feature_variance = 0;  // of D, by the features' standard deviations
-  double outside_variance = 0;  // of D, by features outside their graded range
+  double unknown_variance = 0;  // of D, by features not measured or outside their graded range
   double outside_share = 0;     // largest distance out of a range, in widths of that range
   std::vector<std::string> unfamiliar;
 };
@@ -113,6 +114,9 @@ struct DefectSum {
 // one without value which the scale needs.
 [[nodiscard]] Expected<DefectSum> SumDefects(const Scale& scale, const FeatureTable& features);
 
+// Score::sd joins the weights' covariance, what is not known of the features, the panel's noise,
+// and the larger one of the photo's noise (the features' standard deviations) and the residual that
+// the calibration found: that was found with features of usual noise, which must not count twice.
 [[nodiscard]] Expected<Score> ScoreCoupon(const Scale& scale, const FeatureTable& features);
 
 // score = 1 + 9 exp(-D / 9) and its slope d score / d D, for D >= 0.

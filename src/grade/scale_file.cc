@@ -136,7 +136,7 @@ GradedCoupon ReadCoupon(const JsonView& view) {
   GradedCoupon coupon;
   coupon.batch = view.Text("batch");
   coupon.well = view.Text("well");
-  coupon.grade = view.Number("grade");  // strictness taken off: may pass 10 a little
+  coupon.grade = view.MaybeNumber("grade");  // strictness taken off: may pass 10 a little
   coupon.score = Grade(view, "score");
   view.NoOtherKeys();
   return coupon;
@@ -186,9 +186,11 @@ Scale ReadScaleObject(const JsonView& view) {
   for (const JsonView& accuracy : view.Objects("accuracy")) {
     scale.accuracy.push_back(ReadAccuracy(accuracy));
   }
+  scale.report = view.Texts("report");
   const std::string stated = view.Text("content");
   view.NoOtherKeys();
-  if (stated != ScaleContentHash(scale)) {
+  const bool bare = scale.coupons.empty() && stated.empty();  // written by hand, fitted to nothing
+  if (!bare && stated != ScaleContentHash(scale)) {
     view.Fail("content",
               "the file was changed after it was written, and its numbers no longer "
               "describe the calibration; restore it, or calibrate anew");
@@ -257,15 +259,16 @@ ordered_json ContentJson(const Scale& scale) {
   json["panel"] = scale.panel;
   json["coupons"] = ordered_json::array();
   for (const GradedCoupon& coupon : scale.coupons) {
-    json["coupons"].push_back({{"batch", coupon.batch},
-                               {"well", coupon.well},
-                               {"grade", Rounded(coupon.grade)},
-                               {"score", Rounded(coupon.score)}});
+    ordered_json entry{{"batch", coupon.batch}, {"well", coupon.well}};
+    if (coupon.grade) entry["grade"] = Rounded(*coupon.grade);
+    entry["score"] = Rounded(coupon.score);
+    json["coupons"].push_back(entry);
   }
   json["accuracy"] = ordered_json::array();
   for (const ScaleAccuracy& accuracy : scale.accuracy) {
     json["accuracy"].push_back(AccuracyJson(accuracy));
   }
+  json["report"] = scale.report;
   return json;
 }
 

@@ -34,6 +34,7 @@ inline Scale ExampleScale() {
   scale.panel = 3;
   scale.coupons = {{"b1", "A1", 8.5, 8.2}};
   scale.accuracy = {{"one coupon at a time", 1, 0.3, 0.4, 0.9, std::nullopt}};
+  scale.report = {"fitted to an example", ""};
   return scale;
 }
 

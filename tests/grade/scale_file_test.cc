@@ -84,6 +84,16 @@ TEST(ScaleFile, NonsenseIsRefusedWithTheKey) {
   }
 }
 
+// What a first calibration starts from may be written by hand: no coupons, no hash.
+TEST(ScaleFile, ABareScaleNeedsNoHash) {
+  const auto bare = [](json& j) {
+    j["coupons"] = json::array();
+    j["content"] = "";
+  };
+  EXPECT_TRUE(ParseScale(Edited(bare), "s.json"));
+  EXPECT_FALSE(ParseScale(Edited([](json& j) { j["content"] = ""; }), "s.json"));
+}
+
 TEST(ScaleFile, TruncatedTextIsRefusedAtAnyLength) {
   const std::string text = FormatScale(ExampleScale());
   for (size_t length = 0; length + 2 < text.size(); length += 7) {

@@ -61,13 +61,16 @@ TEST(Scale, BoundsSumAndMonotony) {
   }
 }
 
+// A feature's noise counts where it exceeds what the residual holds already: 0.3^2 - 0.4^2 / 3.
 TEST(Scale, FeatureNoiseWidensTheScore) {
   FeatureTable features = ExampleFeatures(2, 10);
   const double before = ScoreCoupon(ExampleScale(), features)->sd;
-  features["ridge_index"].sd = 5;  // term sd 0.5, weight 1
+  features["ridge_index"].sd = 0.5;  // term sd 0.05, weight 1: less than the residual
+  EXPECT_EQ(ScoreCoupon(ExampleScale(), features)->sd, before);
+  features["ridge_index"].sd = 5;  // term sd 0.5
   const double slope = std::exp(-1.0 / 3);
   EXPECT_NEAR(std::pow(ScoreCoupon(ExampleScale(), features)->sd, 2) - before * before,
-              slope * slope * 0.25, 1e-12);
+              slope * slope * 0.25 - (0.09 - 0.16 / 3), 1e-12);
 }
 
 TEST(Scale, OutOfRangeIsNamedAndLessSure) {
