@@ -11,7 +11,7 @@ namespace {
 
 // Height of a ridge for each um by which it makes the valleys' darkness vary, from the sample
 // plates (docs/metrics.md, "Ridges").
-constexpr double kHeightForDarkness = 7;
+constexpr double kHeightForDarkness = 10;
 
 // Ridges are believed between the first value (not at all) and the second (fully).
 struct Ramp {
