@@ -106,6 +106,7 @@ bool MoveOutliers(SinglePhoto& photo) {
   constexpr double kTimesMedian = 5;
   constexpr double kLeast_px = 0.5;
   std::vector<double> rms_px;
+  rms_px.reserve(photo.used.size());
   for (const MarkerSighting& marker : photo.used) rms_px.push_back(MarkerRms(photo.fit, 0, marker));
   const double limit_px = std::max(kLeast_px, kTimesMedian * Median(rms_px));
   std::vector<MarkerSighting> kept;
@@ -364,6 +365,7 @@ std::vector<Expected<CameraEstimate>> EstimateCameras(std::span<const SheetSight
   for (const auto& [key, members] : groups) {
     if (members.size() < 2) continue;
     std::vector<const SinglePhoto*> photos;
+    photos.reserve(members.size());
     for (const size_t i : members) photos.push_back(&*single[i]);
     const CameraFit fit =
         FitTogether(photos, PriorsFor(sightings[members[0]], options), options.threads);

@@ -23,12 +23,14 @@ std::string Ranges(const std::vector<int>& ids) {
 
 std::string FoundRanges(const std::vector<FoundMarker>& markers) {
   std::vector<int> ids;
+  ids.reserve(markers.size());
   for (const FoundMarker& marker : markers) ids.push_back(marker.id);
   return Ranges(ids);
 }
 
 std::string SheetRanges(const SheetDescription& sheet) {
   std::vector<int> ids;
+  ids.reserve(sheet.markers.size());
   for (const SheetMarker& marker : sheet.markers) ids.push_back(marker.id);
   std::sort(ids.begin(), ids.end());
   return fmt::format("{}: {}", sheet.name, Ranges(ids));

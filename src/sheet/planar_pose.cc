@@ -55,8 +55,8 @@ double GuessFocal(const std::vector<MarkerSighting>& markers, LensVector lens, d
   const double expected = lens[kLogFocal];
   double best = expected;
   double best_cost = std::numeric_limits<double>::infinity();
-  for (double share = 0.5; share <= 4.01; share *= std::pow(2, 0.25)) {
-    lens[kLogFocal] = std::log(share * diagonal_px);
+  for (int rung = -4; rung <= 8; ++rung) {
+    lens[kLogFocal] = std::log(diagonal_px) + rung * std::log(2) / 4;
     const double from_prior = (lens[kLogFocal] - expected) / log_focal_sd;
     for (const PhotoVector& pose : PlanarPoses(markers, lens)) {
       const double cost =

@@ -140,6 +140,7 @@ Trend RobustTrend(const std::vector<EdgePoint>& points) {
   }
   Trend trend{0, Median(slopes)};
   std::vector<double> offsets;
+  offsets.reserve(points.size());
   for (const EdgePoint& p : points) offsets.push_back(trend.Residual(p));
   trend.intercept = Median(offsets);
   return trend;
@@ -169,6 +170,7 @@ std::optional<Line> FitLine(const Side& side, const std::vector<EdgePoint>& poin
   constexpr double kFloor_px = 0.01;  // rounding of the crossings: not an outlier
   const Trend robust = RobustTrend(points);
   std::vector<double> residuals;
+  residuals.reserve(points.size());
   for (const EdgePoint& p : points) residuals.push_back(robust.Residual(p));
   const double limit_px = 3 * std::max(RobustDeviation(residuals), kFloor_px);
   std::vector<EdgePoint> kept;
