@@ -3,12 +3,16 @@
 #include <opencv2/core.hpp>
 #include <optional>
 #include <string>
+#include <vector>
 
 #include "coupon/coupon_description.h"
 #include "coupon/patch.h"
 #include "texture/field_spectrum.h"
 #include "texture/line_spectrum.h"
 #include "texture/line_valleys.h"
+#include "texture/top_view.h"
+#include "texture/torn_area.h"
+#include "texture/tracks.h"
 
 namespace laygauge {
 
@@ -33,10 +37,13 @@ struct Surface {
   // spread of 0.06 mm holds, with a quarter of the pixels and half the noise.
   AlignedField aligned_half;
   LineValleys valleys;  // of `aligned`
+  TornArea torn;
+  TopView top;               // the whole top surface, at a lower scale, without torn areas
+  std::vector<Track> scars;  // on `top`; none are looked for on a failed coupon
 };
 
-// Finds the lines and turns the field. `patch` and `coupon` are kept by address: they must outlive
-// the result.
+// Finds the lines, torn areas and scars, and turns the field. `patch` and `coupon` are kept by
+// address: they must outlive the result.
 [[nodiscard]] Surface MakeSurface(const Patch& patch, const CouponDescription& coupon);
 
 // The field with a border of half a millimetre (at 20 px/mm), turned about the coupon's origin so

@@ -1,0 +1,38 @@
+#pragma once
+
+#include <opencv2/core.hpp>
+#include <vector>
+
+#include "texture/top_view.h"
+
+namespace laygauge {
+
+struct TrackOptions {
+  double flatten_mm = 1.0;      // window along the lay whose mean is taken out
+  double detect_length_mm = 5;  // of the straight pieces that are summed
+  double follow_length_mm = 3;  // of the pieces that a found track is followed with
+  double step_mm = 0.6;         // between them
+  double min_angle_deg = 15;    // to the lay; below, gaps and wander look alike
+  double min_sigmas = 7.5;      // of a sum against all sums of its direction
+  double follow_sigmas = 2.0;   // a followed track ends below
+  double min_length_mm = 3;
+  double half_width_mm = 1.3;  // what belongs to a track: its stripes and the window's shadow
+  double max_hidden_mm = 9;  // a track goes on behind a hole or another track of at most this width
+  void Check() const;        // throws BadOption: field, value, rule
+};
+
+// A straight or gently bent track across the lines.
+struct Track {
+  std::vector<cv::Point2d> path_px;  // in the view
+  double length_mm = 0;              // on the searched top; what a hole hides is not counted
+  double sigmas = 0;                 // of its strongest piece
+};
+
+// Straight pieces of a fixed length are summed at all places and directions (Duda and Hart, "Use
+// of the Hough transformation to detect lines and curves in pictures", CACM 15, 1972, of local
+// lines: Donoho and Huo, "Beamlets and multiscale image analysis", 2002), on the view without its
+// lines, clipped at 2.5 of its own deviations so that no short defect weighs as much as a track.
+// The strongest is followed both ways and wiped out; what then still stands out is the next.
+[[nodiscard]] std::vector<Track> FindTracks(const TopView& view, const TrackOptions& options = {});
+
+}  // namespace laygauge
