@@ -15,13 +15,15 @@ constexpr double kTiltGain = 0.75;  // shadow that light from one side casts
 constexpr double kMinUm = 12;
 // Beyond these the probe shows a mirrored lamp, not shading.
 constexpr double kProbeLowUm = -8;
-constexpr double kProbeHighUm = 30;
+constexpr double kProbeHighUm = 42;
+// As dark as this, the probe is dark because line tops mirror a lamp, and its tilt only says where.
+constexpr double kMirrorUm = 40;
 
 // Light that a channel takes for each width of it: its floor is not wholly dark.
 constexpr double kOpenDarkness = 0.9;
 
 constexpr double kMinOpenUm = 4;       // of a channel's every part
-constexpr double kMinWidestUm = 8;     // of its widest part: twice what noise of the sample
+constexpr double kMinWidestUm = 10;    // of its widest part: twice what noise of the sample
                                        // plates makes of a closed valley
 constexpr double kMinLengthMm = 0.75;  // a scar or a grain of noise is shorter along the lay
 constexpr double kLinkMm = 0.1;        // across the lay, from station to station
@@ -212,8 +214,9 @@ Finding MeasureGaps(const Surface& surface) {
 
 double ClosedValleyDarknessUm(const GrooveShading& shading, double level) {
   const double probe = std::clamp(shading.darkness_um, kProbeLowUm, kProbeHighUm);
+  const double matte = std::clamp(1 - probe / kMirrorUm, 0.0, 1.0);
   return std::max(kMinUm, kDeepUm - kInterreflectionUm * level + kProbeGain * probe +
-                              kTiltGain * shading.tilt_um);
+                              kTiltGain * matte * shading.tilt_um);
 }
 
 Feature MeasureGapArea(const Surface& surface) {
