@@ -53,27 +53,4 @@ struct Lines {
 [[nodiscard]] Expected<Lines> FindLines(const FieldSpectrum& spectrum,
                                         const LineSpectrumOptions& options = {});
 
-// How strongly the lines show, and how alike the tiles are.
-struct LineContrast {
-  // Amplitudes of harmonics 1, 2 and 3, root mean square over tiles, fractions of mean reflectance.
-  double fundamental = 0;
-  double second = 0;
-  double third = 0;
-  double total = 0;  // root of the sum of their squares
-  double fundamental_sd = 0;
-  double second_sd = 0;
-  double total_sd = 0;
-  double agreement_sd = 0;  // of Lines::phase_agreement
-};
-[[nodiscard]] LineContrast MeasureLineContrast(const FieldSpectrum& spectrum, const Lines& lines);
-
-// How far the tiles' own pitches and lays lie from the field's: root mean squares, weighted by the
-// power, of the peak next to the lines' wave vector in each tile's spectrum.
-struct LineScatter {
-  double pitch_pct = 0;
-  double lay_deg = 0;
-  double relative_sd = 0;  // of both, relative: 1 / sqrt(2 n) of normal data
-};
-[[nodiscard]] LineScatter MeasureLineScatter(const FieldSpectrum& spectrum, const Lines& lines);
-
 }  // namespace laygauge

@@ -2,6 +2,8 @@
 
 #include <cmath>
 
+#include "texture/line_contrast.h"
+
 namespace laygauge {
 namespace {
 

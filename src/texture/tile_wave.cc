@@ -1,0 +1,122 @@
+#include "texture/tile_wave.h"
+
+#include <Eigen/Dense>
+#include <algorithm>
+#include <cmath>
+#include <numbers>
+
+namespace laygauge {
+namespace {
+
+constexpr double kTwoPi = 2 * std::numbers::pi;
+
+// Sum of the amplitudes, each turned back by the phase that `shift` gives at its tile.
+std::complex<double> CoherentSum(const FieldSpectrum& spectrum, const Amplitudes& amplitudes,
+                                 cv::Point2d shift) {
+  std::complex<double> sum = 0;
+  for (std::size_t t = 0; t < amplitudes.size(); ++t) {
+    sum += amplitudes[t] * std::polar(1.0, -kTwoPi * shift.dot(spectrum.tiles[t].centre_mm));
+  }
+  return sum;
+}
+
+// Weighted least squares of the tiles' phases about their mean: phase = c + 2 pi shift . x.
+// Returns the shift; fills the wave's covariance.
+cv::Point2d FitPhases(const FieldSpectrum& spectrum, const Amplitudes& amplitudes, Wave& wave) {
+  const std::complex<double> sum = CoherentSum(spectrum, amplitudes, {});
+  Eigen::Matrix3d normal = Eigen::Matrix3d::Zero();
+  Eigen::Vector3d right = Eigen::Vector3d::Zero();
+  double weights = 0;
+  for (std::size_t t = 0; t < amplitudes.size(); ++t) {
+    const cv::Point2d x = spectrum.tiles[t].centre_mm;
+    const Eigen::Vector3d row(1, kTwoPi * x.x, kTwoPi * x.y);
+    const double phase = std::arg(amplitudes[t] * std::conj(sum));
+    const double weight = std::norm(amplitudes[t]);
+    normal += weight * row * row.transpose();
+    right += weight * phase * row;
+    weights += weight;
+  }
+  const auto solver = normal.ldlt();
+  if (amplitudes.size() < 4 || !(weights > 0) || !(solver.rcond() > 1e-12)) {
+    return {};
+  }
+  const Eigen::Vector3d fit = solver.solve(right);
+  double residuals = 0;
+  for (std::size_t t = 0; t < amplitudes.size(); ++t) {
+    const cv::Point2d x = spectrum.tiles[t].centre_mm;
+    const double phase =
+        std::arg(amplitudes[t] * std::conj(sum)) - fit[0] - kTwoPi * (fit[1] * x.x + fit[2] * x.y);
+    residuals += std::norm(amplitudes[t]) * phase * phase;
+  }
+  const double count = static_cast<double>(amplitudes.size());
+  const double variance = residuals / (count - 3) * std::sqrt(count);
+  wave.covariance = variance * solver.solve(Eigen::Matrix3d::Identity()).bottomRightCorner<2, 2>();
+  return {fit[1], fit[2]};
+}
+
+}  // namespace
+
+double Agreement(const Amplitudes& amplitudes) {
+  std::complex<double> sum = 0;
+  double sum_abs = 0;
+  for (const auto& a : amplitudes) {
+    sum += a;
+    sum_abs += std::abs(a);
+  }
+  return sum_abs > 0 ? std::abs(sum) / sum_abs : 0;
+}
+
+Amplitudes AmplitudesAt(const FieldSpectrum& spectrum, cv::Point2d frequency) {
+  Amplitudes result;
+  for (const auto& tile : DemodulateTiles(spectrum, frequency, 1)) {
+    result.push_back(tile[0]);
+  }
+  return result;
+}
+
+double CoherentPower(const FieldSpectrum& spectrum, cv::Point2d frequency) {
+  return std::norm(CoherentSum(spectrum, AmplitudesAt(spectrum, frequency), {}));
+}
+
+AgreedWave FindAgreedWave(const FieldSpectrum& spectrum, cv::Point2d coarse, double high_per_mm) {
+  constexpr int kSteps = 6;
+  const int harmonics = 2 * cv::norm(coarse) <= high_per_mm ? 2 : 1;
+  std::vector<Amplitudes> amplitudes(harmonics);
+  std::vector<double> powers(harmonics, 1e-300);
+  for (const auto& tile : DemodulateTiles(spectrum, coarse, harmonics)) {
+    for (int h = 0; h < harmonics; ++h) {
+      amplitudes[h].push_back(tile[h]);
+      powers[h] += std::norm(tile[h]) * static_cast<double>(spectrum.tiles.size());
+    }
+  }
+  AgreedWave best;
+  double best_sum = -1;
+  for (int i = -kSteps; i <= kSteps; ++i) {
+    for (int j = -kSteps; j <= kSteps; ++j) {
+      const cv::Point2d shift = spectrum.bin_per_mm / (2 * kSteps) * cv::Point2d(i, j);
+      double sum = 0;
+      double better = 0;
+      for (int h = 0; h < harmonics; ++h) {
+        const double agreement =
+            std::norm(CoherentSum(spectrum, amplitudes[h], (h + 1.0) * shift)) / powers[h];
+        sum += agreement;
+        better = std::max(better, agreement);
+      }
+      if (sum > best_sum) {
+        best_sum = sum;
+        best = {coarse + shift, better};
+      }
+    }
+  }
+  return best;
+}
+
+Wave RefineWave(const FieldSpectrum& spectrum, cv::Point2d start) {
+  Wave wave{start};
+  for (int pass = 0; pass < 2; ++pass) {
+    wave.frequency += FitPhases(spectrum, AmplitudesAt(spectrum, wave.frequency), wave);
+  }
+  return wave;
+}
+
+}  // namespace laygauge
