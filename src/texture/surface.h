@@ -7,6 +7,7 @@
 
 #include "coupon/coupon_description.h"
 #include "coupon/patch.h"
+#include "texture/aligned_field.h"
 #include "texture/field_spectrum.h"
 #include "texture/line_spectrum.h"
 #include "texture/line_valleys.h"
@@ -15,14 +16,6 @@
 #include "texture/tracks.h"
 
 namespace laygauge {
-
-// The field turned so that the lines run along the rows: columns are along the lay, rows across it.
-struct AlignedField {
-  cv::Mat relative;  // CV_32FC1
-  cv::Mat regions;   // CV_8UC1: Region; kOff beyond the field's border
-  double px_per_mm = 20;
-  cv::Matx23d coupon_from_aligned;  // pixel of this image -> mm in the coupon's frame
-};
 
 // What every metric gets: the patch, the coupon's drawing, and the lines found first.
 struct Surface {
@@ -45,13 +38,5 @@ struct Surface {
 // Finds the lines, torn areas and scars, and turns the field. `patch` and `coupon` are kept by
 // address: they must outlive the result.
 [[nodiscard]] Surface MakeSurface(const Patch& patch, const CouponDescription& coupon);
-
-// The field with a border of half a millimetre (at 20 px/mm), turned about the coupon's origin so
-// that the direction `lay_deg` lies along the rows. Bicubic between pixels; regions take their
-// nearest pixel. Beyond the border: 1 and kOff.
-[[nodiscard]] AlignedField AlignField(const Patch& patch, double lay_deg);
-
-// Means of 2 x 2 pixels; a pixel keeps the lowest region of its four (Region's order).
-[[nodiscard]] AlignedField HalveField(const AlignedField& field);
 
 }  // namespace laygauge

@@ -8,7 +8,7 @@ namespace laygauge {
 struct WavinessOptions {
   double min_wavelength_mm = 2;
   double max_wavelength_mm = 10;
-  double cell_mm = 0.4;  // the field is averaged to cells of this side first
+  double cell_mm = 0.5;  // the field is averaged to cells of this side first
   void Check() const;    // throws BadOption: field, value, rule
 };
 

@@ -25,15 +25,28 @@ TEST(Surface, TurnedFieldShowsTheLinesAlongItsRows) {
         const cv::Vec2d mm = field.coupon_from_aligned * cv::Vec3d(x, y, 1);
         const double across = AcrossLay({mm[0], mm[1]}, lay);
         const double want = 1 + 0.2 * std::cos(2 * std::numbers::pi * across / 0.5);
-        // Positions rounded to 1/32 px move the steepest slope (0.126 a pixel) by 0.0028; the
-        // bicubic kernel (a = -0.75) errs by at most 2.7 % and 1.5 % of the amplitude along the two
-        // axes.
-        ASSERT_NEAR(field.relative.at<float>(y, x), want, 0.011) << lay << " " << x << " " << y;
+        // Steps of 1/64 px are rounded: 1/128 px on either axis moves the steepest slope (0.126 a
+        // pixel) by 0.0014; Keys' kernel errs by at most 0.44 % of the amplitude, 0.0009.
+        ASSERT_NEAR(field.relative.at<float>(y, x), want, 0.0025) << lay << " " << x << " " << y;
         ++pixels;
       }
     }
     EXPECT_NEAR(pixels * 49, cv::countNonZero(patch.regions == 3), 0.02 * pixels * 49);
   }
+}
+
+// Halved pixels are means of 2 x 2, at their common centre; a region is the lowest of the four.
+TEST(Surface, HalvedField) {
+  const AlignedField field = AlignField(RenderLines({.pitch_mm = 0.5, .lay_deg = 30}), 30);
+  const AlignedField half = HalveField(field);
+  EXPECT_EQ(half.px_per_mm, 10);
+  const int x = half.relative.cols / 3;
+  const int y = half.relative.rows / 3;
+  const cv::Mat four = field.relative(cv::Rect(2 * x, 2 * y, 2, 2));
+  EXPECT_NEAR(half.relative.at<float>(y, x), cv::mean(four)[0], 1e-6);
+  const cv::Vec2d centre = half.coupon_from_aligned * cv::Vec3d(x, y, 1);
+  const cv::Vec2d want = field.coupon_from_aligned * cv::Vec3d(2 * x + 0.5, 2 * y + 0.5, 1);
+  EXPECT_NEAR(cv::norm(centre - want), 0, 1e-12);
 }
 
 TEST(Surface, KeepsPatchAndLines) {
