@@ -94,10 +94,14 @@ Finding Measure(const Surface& surface) {
     const Feature none{std::nullopt, std::nullopt, "the field holds no whole cell of 0.8 mm"};
     return {std::vector<Feature>(4, none), {}};
   }
+  // Without lines the cells' directions are those of noise.
+  const Feature spread =
+      surface.lines ? Feature{energy->orientation_spread_deg, energy->orientation_spread_sd_deg, ""}
+                    : Feature{std::nullopt, std::nullopt, surface.no_lines_reason};
   return {{{energy->along, energy->along_sd, ""},
            {energy->across, energy->across_sd, ""},
            {energy->coherence, energy->coherence_sd, ""},
-           {energy->orientation_spread_deg, energy->orientation_spread_sd_deg, ""}},
+           spread},
           {}};
 }
 

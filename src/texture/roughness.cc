@@ -118,9 +118,11 @@ Finding Measure(const Surface& surface) {
   if (!roughness) {
     return {{no_tiles, no_tiles}, {}};
   }
-  return {{{roughness->aperiodic, roughness->aperiodic_sd, ""},
-           {roughness->line_share, roughness->line_share_sd, ""}},
-          {}};
+  const Feature aperiodic{roughness->aperiodic, roughness->aperiodic_sd, ""};
+  if (!surface.lines) {
+    return {{aperiodic, {std::nullopt, std::nullopt, surface.no_lines_reason}}, {}};
+  }
+  return {{aperiodic, {roughness->line_share, roughness->line_share_sd, ""}}, {}};
 }
 
 }  // namespace
@@ -171,7 +173,7 @@ std::optional<Roughness> MeasureRoughness(const FieldSpectrum& spectrum,
   result.aperiodic_sd = result.aperiodic > 0 ? StandardDeviation(aperiodic) / std::sqrt(count) /
                                                    (2 * result.aperiodic)
                                              : 0;
-  result.line_share = total > 0 ? 1 - Mean(aperiodic) * count / total : 0;
+  result.line_share = total > 0 ? std::max(0.0, 1 - Mean(aperiodic) * count / total) : 0;
   result.line_share_sd = StandardDeviation(shares) / std::sqrt(count);
   return result;
 }
