@@ -30,10 +30,10 @@ std::string Maybe(const std::optional<double>& value) {
 std::string AccuracyText(const std::vector<ScaleAccuracy>& accuracy) {
   if (accuracy.empty()) return "";
   std::string text = "\nLeft out, then foretold (points)\n";
-  text += fmt::format("  {:<24}{:>8}{:>12}{:>8}{:>10}{:>18}\n", "", "coupons", "mean |error|",
+  text += fmt::format("  {:<24}{:>8}{:>14}{:>8}{:>10}{:>18}\n", "", "coupons", "mean |error|",
                       "RMS", "rank", "quadratic kappa");
   for (const ScaleAccuracy& a : accuracy) {
-    text += fmt::format("  {:<24}{:>8}{:>12.2f}{:>8.2f}{:>10}{:>18}\n", a.left_out, a.coupons,
+    text += fmt::format("  {:<24}{:>8}{:>14.2f}{:>8.2f}{:>10}{:>18}\n", a.left_out, a.coupons,
                         a.mean_absolute_error, a.rms_error, Maybe(a.rank_correlation),
                         Maybe(a.weighted_kappa));
   }
