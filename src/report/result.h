@@ -18,6 +18,7 @@ enum class CouponStatus { kOk, kRetake, kEmpty };
 struct ResultRow {
   std::string batch;
   std::string well;
+  std::string photo;                  // with one row a take: the file; else empty
   std::vector<std::string> settings;  // parallel to ResultTable::setting_columns
   CouponStatus status = CouponStatus::kOk;
   std::string note;  // why it is not ok, or what to know about it; may be empty
@@ -36,6 +37,7 @@ struct ResultTable {
   std::vector<ResultRow> rows;
   std::string scale_name;
   std::string scale_remark;  // what must be said wherever a score shows; may be empty
+  bool each_take = false;    // one row a coupon and photo, with the column photo
   bool with_loss = false;    // adds the column loss = 10 - score, for programs that minimise
 };
 

@@ -29,6 +29,7 @@ struct NamedCell {
 
 std::vector<NamedCell> Cells(const ResultTable& table, const ResultRow& row) {
   std::vector<NamedCell> cells{{"batch", {row.batch}}, {"well", {row.well}}};
+  if (table.each_take) cells.push_back({"photo", {row.photo}});
   for (size_t i = 0; i < table.setting_columns.size(); ++i) {
     cells.push_back({table.setting_columns[i], {row.settings[i]}});
   }

@@ -1,0 +1,119 @@
+#include "batch/measure_photo.h"
+
+#include <opencv2/core.hpp>
+
+#include "texture/metric.h"
+#include "texture/surface.h"
+
+namespace laygauge {
+namespace {
+
+struct PhotoStages {
+  const Photo& photo;
+  const SheetDescription& sheet;
+  const CameraEstimate& camera;
+  const CouponDescription& coupon;
+  const CouponRegions& regions;
+  const MeasurePhotoOptions& options;
+  const Light& light;
+  const SheetSharpness& sharpness;
+};
+
+void MeasureTexture(const Patch& patch, const CouponDescription& coupon, CouponRecord& record) {
+  const Surface surface = MakeSurface(patch, coupon);
+  for (const Metric& metric : MetricTable()) {
+    Finding finding = metric.measure(surface);
+    for (size_t i = 0; i < metric.features.size(); ++i) {
+      record.features.push_back(
+          {std::string(metric.features[i].name), std::move(finding.features[i])});
+    }
+    std::move(finding.marks.begin(), finding.marks.end(), std::back_inserter(record.marks));
+  }
+}
+
+Expected<Patch> SharpPatch(const PhotoStages& stages, const Placement& placement) {
+  auto patch = MakePatch(stages.photo, stages.camera.view, stages.light, placement,
+                         stages.coupon.thickness_mm, stages.regions, stages.options.patch);
+  if (!patch) return patch;
+  const LocalSpread spread =
+      stages.sharpness.At(placement.center_x_mm, placement.center_y_mm, placement.turn_deg);
+  return Equalize(*patch, spread, stages.options.equalize);
+}
+
+CouponRecord MeasureWell(const PhotoStages& stages, const Well& well, std::optional<Patch>& patch) {
+  CouponRecord record;
+  record.well = well.name;
+  WellFinding found = LocateCoupon(stages.photo, stages.camera.view, stages.light, stages.sheet,
+                                   well, stages.coupon, stages.options.locate);
+  record.note = found.reason;
+  if (found.state == WellState::kEmpty) return record;
+  record.status = CouponStatus::kRetake;
+  record.placement = found.placement;
+  if (found.state == WellState::kUnclear) return record;
+  auto made = SharpPatch(stages, *found.placement);
+  if (!made) {
+    record.note = made.error().message;
+    return record;
+  }
+  patch = std::move(*made);
+  record.status = CouponStatus::kOk;
+  record.level = patch->level;
+  record.noise_sd = patch->noise_sd;
+  record.blur_sd_mm = patch->blur_sd_mm;
+  MeasureTexture(*patch, stages.coupon, record);
+  return record;
+}
+
+}  // namespace
+
+void MeasurePhotoOptions::Check() const {
+  light.Check();
+  sharpness.Check();
+  locate.Check();
+  regions.Check();
+  patch.Check();
+  equalize.Check();
+}
+
+Expected<PhotoMeasurement> MeasurePhoto(const Photo& photo, const SheetDescription& sheet,
+                                        const CameraEstimate& camera,
+                                        const CouponDescription& coupon,
+                                        const CouponRegions& regions,
+                                        const MeasurePhotoOptions& options) {
+  options.Check();
+  auto light = EstimateLight(photo, camera.view, sheet, options.light);
+  if (!light) return tl::unexpected(light.error());
+  auto sharpness = MeasureSharpness(photo, camera.view, sheet, options.sharpness);
+  if (!sharpness) return tl::unexpected(sharpness.error());
+
+  const PhotoStages stages{photo, sheet, camera, coupon, regions, options, *light, *sharpness};
+  PhotoMeasurement measured;
+  measured.record.coupons.resize(sheet.wells.size());
+  measured.patches.resize(sheet.wells.size());
+  cv::parallel_for_(cv::Range(0, static_cast<int>(sheet.wells.size())),
+                    [&](const cv::Range& range) {
+                      for (int i = range.start; i < range.end; ++i) {
+                        const auto well = static_cast<size_t>(i);
+                        measured.record.coupons[well] =
+                            MeasureWell(stages, sheet.wells[well], measured.patches[well]);
+                      }
+                    });
+
+  PhotoRecord& record = measured.record;
+  record.file = std::filesystem::path(photo.file).filename().string();
+  record.stem = photo.stem;
+  record.size_px = photo.size();
+  record.tags = photo.tags;
+  record.sheet = sheet.name;
+  record.bar_mm = sheet.scale_bar.length_mm();
+  record.coupon = coupon.name;
+  record.camera = camera;
+  record.px_per_mm = regions.px_per_mm;
+  record.notes = camera.notes;
+  record.notes.insert(record.notes.end(), light->warnings.begin(), light->warnings.end());
+  record.light = std::move(*light);
+  record.sharpness = std::move(*sharpness);
+  return measured;
+}
+
+}  // namespace laygauge
