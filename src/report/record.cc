@@ -161,7 +161,7 @@ std::string FormatRecord(const PhotoRecord& record) {
   Json metrics = Json::object();
   for (const Metric& metric : MetricTable()) metrics[std::string(metric.name)] = metric.version;
   Json json{{"format", kRecordFormat},
-            {"program", kProgramVersion},
+            {"program", ProgramVersion()},
             {"photo", record.file},
             {"batch", record.batch},
             {"take", TextOrNull(record.take)},
