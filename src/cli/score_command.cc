@@ -116,19 +116,9 @@ class Folder {
   }
 
  private:
-  // The first take of a coupon has the plain name, the others -take2, -take3, ...
-  std::string PictureName(const std::string& batch, const std::string& well) {
-    std::string name = fmt::format("{}-{}", batch, well);
-    const int take = ++takes_[name];
-    for (char& letter : name) {
-      if (letter == '/' || letter == '\\' || letter == '\0') letter = '_';
-    }
-    return take == 1 ? name : fmt::format("{}-take{}", name, take);
-  }
-
   Done KeepPictures(const PhotoRecord& record, const CouponRecord& found, const Patch& patch,
                     const CouponDescription& coupon) {
-    const std::string name = PictureName(record.batch, found.well);
+    const int take = ++takes_[{record.batch, found.well}];
     std::vector<std::string> caption{
         fmt::format("batch {}  well {}  photo {}", record.batch, found.well, record.file)};
     if (found.score) {
@@ -139,17 +129,16 @@ class Folder {
     const cv::Mat plain = PictureOfPatch(patch);
     const cv::Mat drawn = PictureOfFindings(patch, coupon, found.marks, caption);
     const fs::path folder = path_ / "pictures";
-    if (auto done = WriteFileWhole(folder / (name + ".png"), EncodePng(plain, patch.px_per_mm));
-        !done) {
-      return done;
-    }
-    return WriteFileWhole(folder / (name + "-found.png"), EncodePng(drawn, patch.px_per_mm));
+    return WriteFilesWhole(
+        {{folder / PictureName(record.batch, found.well, take), EncodePng(plain, patch.px_per_mm)},
+         {folder / PictureName(record.batch, found.well, take, "-found"),
+          EncodePng(drawn, patch.px_per_mm)}});
   }
 
   fs::path path_;
   bool pictures_;
   std::vector<fs::path> made_;
-  std::map<std::string, int> takes_;
+  std::map<std::pair<std::string, std::string>, int> takes_;  // pictures so far, by coupon
 };
 
 // "photo 3 of 8" on one line that is written over, where standard error is a terminal.
@@ -212,7 +201,7 @@ Command AddScoreCommand(CLI::App& program) {
   const auto options = std::make_shared<ScoreOptions>();
   CLI::App* app = program.add_subcommand(
       "score", "Score the coupons in photographs: a table, records and pictures");
-  app->add_option("photos", options->photos, "photographs: JPEG, PNG or TIFF")
+  app->add_option("PHOTO", options->photos, "photographs: JPEG, PNG or TIFF")
       ->required()
       ->type_name("PHOTO");
   app->add_option("--sheet", options->sheet,

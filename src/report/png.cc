@@ -1,8 +1,10 @@
 #include "report/png.h"
 
+#include <fmt/format.h>
 #include <png.h>
 
 #include <cmath>
+#include <cstring>
 #include <stdexcept>
 #include <vector>
 
@@ -58,6 +60,42 @@ std::string EncodePng(const cv::Mat& image, double px_per_mm) {
   }
   png_write_end(writer.png, writer.info);
   return bytes;
+}
+
+std::optional<double> WidthMmOfPng(std::string_view bytes) {
+  // PNG (ISO/IEC 15948): signature, then chunks of length, type, data and check sum.
+  constexpr std::string_view kSignature = "\x89PNG\r\n\x1a\n";
+  if (!bytes.starts_with(kSignature)) return std::nullopt;
+  const auto number_at = [&](size_t at) {
+    double number = 0;
+    for (size_t i = at; i < at + 4; ++i) {
+      number = number * 256 + static_cast<unsigned char>(bytes[i]);
+    }
+    return number;
+  };
+  double width_px = 0;
+  for (size_t at = kSignature.size(); at + 12 <= bytes.size();) {
+    const double length = number_at(at);
+    if (length > static_cast<double>(bytes.size() - at - 12)) return std::nullopt;
+    const std::string_view type = bytes.substr(at + 4, 4);
+    if (type == "IHDR" && length >= 4) width_px = number_at(at + 8);
+    if (type == "pHYs" && length == 9 && bytes[at + 16] == PNG_RESOLUTION_METER) {
+      const double px_per_m = number_at(at + 8);
+      if (px_per_m > 0 && width_px > 0) return width_px / px_per_m * 1000;
+    }
+    at += static_cast<size_t>(length) + 12;
+  }
+  return std::nullopt;
+}
+
+std::string PictureName(std::string_view batch, std::string_view well, int take,
+                        std::string_view suffix) {
+  std::string name = fmt::format("{}-{}", batch, well);
+  for (char& letter : name) {
+    if (letter == '/' || letter == '\\' || letter == '\0') letter = '_';
+  }
+  if (take > 1) name += fmt::format("-take{}", take);
+  return fmt::format("{}{}.png", name, suffix);
 }
 
 }  // namespace laygauge
