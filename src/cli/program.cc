@@ -6,12 +6,14 @@
 #include <opencv2/core/utility.hpp>
 
 #include "base/version.h"
+#include "cli/grade_command.h"
+#include "cli/score_command.h"
 #include "cli/sheet_command.h"
 
 namespace laygauge {
 namespace {
 
-constexpr std::array<AddCommand, 1> kCommands{AddSheetCommand};
+constexpr std::array kCommands{AddSheetCommand, AddScoreCommand, AddGradeCommand};
 
 constexpr std::string_view kAbout =
     "laygauge scores the top surfaces of small printed coupons from a photograph.\n"
