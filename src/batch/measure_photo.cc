@@ -1,5 +1,8 @@
 #include "batch/measure_photo.h"
 
+#include <fmt/format.h>
+
+#include <filesystem>
 #include <opencv2/core.hpp>
 
 #include "texture/metric.h"
@@ -17,6 +20,7 @@ struct PhotoStages {
   const MeasurePhotoOptions& options;
   const Light& light;
   const SheetSharpness& sharpness;
+  const PhotoNoise& noise;
 };
 
 void MeasureTexture(const Patch& patch, const CouponDescription& coupon, CouponRecord& record) {
@@ -31,13 +35,19 @@ void MeasureTexture(const Patch& patch, const CouponDescription& coupon, CouponR
   }
 }
 
-Expected<Patch> SharpPatch(const PhotoStages& stages, const Placement& placement) {
+Expected<Patch> SharpPatch(const PhotoStages& stages, const Well& well,
+                           const Placement& placement) {
   auto patch = MakePatch(stages.photo, stages.camera.view, stages.light, placement,
                          stages.coupon.thickness_mm, stages.regions, stages.options.patch);
   if (!patch) return patch;
-  const LocalSpread spread =
-      stages.sharpness.At(placement.center_x_mm, placement.center_y_mm, placement.turn_deg);
-  return Equalize(*patch, spread, stages.options.equalize);
+  const double x_mm = placement.center_x_mm;
+  const double y_mm = placement.center_y_mm;
+  return Equalize(*patch,
+                  {.where = fmt::format("{}, well {}", stages.photo.file, well.name),
+                   .spread = stages.sharpness.At(x_mm, y_mm, placement.turn_deg),
+                   .paper_light = stages.sharpness.paper.At(x_mm, y_mm),
+                   .noise = stages.noise},
+                  stages.options.equalize);
 }
 
 CouponRecord MeasureWell(const PhotoStages& stages, const Well& well, std::optional<Patch>& patch) {
@@ -50,7 +60,7 @@ CouponRecord MeasureWell(const PhotoStages& stages, const Well& well, std::optio
   record.status = CouponStatus::kRetake;
   record.placement = found.placement;
   if (found.state == WellState::kUnclear) return record;
-  auto made = SharpPatch(stages, *found.placement);
+  auto made = SharpPatch(stages, well, *found.placement);
   if (!made) {
     record.note = made.error().message;
     return record;
@@ -85,8 +95,12 @@ Expected<PhotoMeasurement> MeasurePhoto(const Photo& photo, const SheetDescripti
   if (!light) return tl::unexpected(light.error());
   auto sharpness = MeasureSharpness(photo, camera.view, sheet, options.sharpness);
   if (!sharpness) return tl::unexpected(sharpness.error());
+  const auto noise = MeasureNoise(photo, camera.view, sheet, *sharpness,
+                                  options.equalize.working_blur_sd_mm, options.equalize.max_gain);
+  if (!noise) return tl::unexpected(noise.error());
 
-  const PhotoStages stages{photo, sheet, camera, coupon, regions, options, *light, *sharpness};
+  const PhotoStages stages{photo,   sheet,  camera,     coupon, regions,
+                           options, *light, *sharpness, *noise};
   PhotoMeasurement measured;
   measured.record.coupons.resize(sheet.wells.size());
   measured.patches.resize(sheet.wells.size());
