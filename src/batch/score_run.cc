@@ -129,7 +129,7 @@ Expected<ScoreRun> RunScoring(const ScoreRunRequest& request, const TakePhoto& t
     } else {
       if (auto done = take(*measured); !done) return tl::unexpected(done.error());
       for (const std::string& note : measured->record.notes) {
-        run.notes.push_back(fmt::format("{}: {}", measured->record.file, note));
+        run.notes.push_back(note);
       }
       records.push_back(std::move(measured->record));
     }
