@@ -111,14 +111,6 @@ ResultRow RowOf(const CouponTakes& coupon, const std::vector<std::string>& featu
 
 }  // namespace
 
-FeatureTable FeaturesOf(const CouponRecord& coupon) {
-  FeatureTable features;
-  for (const NamedFeature& named : coupon.features) {
-    features[named.name] = {named.feature.value, named.feature.sd};
-  }
-  return features;
-}
-
 FeatureValue MeanOfTakes(const std::vector<FeatureValue>& takes) {
   std::vector<double> values;
   double variance_sum = 0;

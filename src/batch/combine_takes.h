@@ -12,9 +12,6 @@
 
 namespace laygauge {
 
-// A coupon's features as the scale reads them.
-[[nodiscard]] FeatureTable FeaturesOf(const CouponRecord& coupon);
-
 // One feature over several takes: the mean of the takes that have a value. Its standard deviation:
 // the larger of what the takes' own ones give and of what their spread gives, both of the mean.
 [[nodiscard]] FeatureValue MeanOfTakes(const std::vector<FeatureValue>& takes);

@@ -5,6 +5,7 @@
 #include <filesystem>
 #include <opencv2/core.hpp>
 
+#include "grade/indices.h"
 #include "texture/metric.h"
 #include "texture/surface.h"
 
@@ -23,6 +24,9 @@ struct PhotoStages {
   const PhotoNoise& noise;
 };
 
+Feature FeatureOf(const FeatureValue& value) { return {value.value, value.sd, "no part measured"}; }
+
+// The indices first, then every metric's features in the table's order.
 void MeasureTexture(const Patch& patch, const CouponDescription& coupon, CouponRecord& record) {
   const Surface surface = MakeSurface(patch, coupon);
   for (const Metric& metric : MetricTable()) {
@@ -33,6 +37,11 @@ void MeasureTexture(const Patch& patch, const CouponDescription& coupon, CouponR
     }
     std::move(finding.marks.begin(), finding.marks.end(), std::back_inserter(record.marks));
   }
+  const FeatureTable features = FeaturesOf(record);
+  record.features.insert(
+      record.features.begin(),
+      {{std::string(kRoughnessColumn), FeatureOf(IndexOf(RoughnessParts(), features))},
+       {std::string(kDefectsColumn), FeatureOf(IndexOf(DefectParts(), features))}});
 }
 
 Expected<Patch> SharpPatch(const PhotoStages& stages, const Well& well,

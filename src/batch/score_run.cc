@@ -7,6 +7,8 @@
 #include <set>
 
 #include "batch/combine_takes.h"
+#include "grade/fault.h"
+#include "grade/indices.h"
 #include "grade/scale_file.h"
 #include "texture/metric.h"
 
@@ -14,7 +16,7 @@ namespace laygauge {
 namespace {
 
 std::vector<std::string> FeatureColumns() {
-  std::vector<std::string> columns;
+  std::vector<std::string> columns{std::string(kRoughnessColumn), std::string(kDefectsColumn)};
   for (const Metric& metric : MetricTable()) {
     for (const FeatureInfo& feature : metric.features) columns.emplace_back(feature.name);
   }
@@ -23,6 +25,15 @@ std::vector<std::string> FeatureColumns() {
 
 PhotoListEntry EntryOf(const ScoreRunRequest& request, const std::filesystem::path& photo) {
   return request.photo_list ? request.photo_list->EntryOf(photo) : PhotoList{}.EntryOf(photo);
+}
+
+RunSettings SettingsOf(const ScoreRunRequest& request, const std::string& batch,
+                       const std::string& well) {
+  RunSettings settings;
+  if (!request.runs) return settings;
+  const std::vector<std::string> values = request.runs->SettingsOf(batch, well);
+  for (size_t i = 0; i < values.size(); ++i) settings[request.runs->setting_columns[i]] = values[i];
+  return settings;
 }
 
 // Every well that the run sheet lists for a photographed batch must be on its sheet.
@@ -69,7 +80,11 @@ Expected<PhotoMeasurement> MeasureOpened(const ScoreRunRequest& request,
   record.notes.insert(record.notes.begin(), found_notes.begin(), found_notes.end());
   for (CouponRecord& coupon : record.coupons) {
     if (coupon.status != CouponStatus::kOk) continue;
-    if (auto score = ScoreCoupon(request.scale, FeaturesOf(coupon))) coupon.score = *score;
+    const FeatureTable features = FeaturesOf(coupon);
+    if (auto score = ScoreCoupon(request.scale, features)) coupon.score = *score;
+    const Fault fault = ChiefFault(features, SettingsOf(request, record.batch, coupon.well));
+    coupon.fault = fault.name;
+    coupon.fault_evidence = fault.evidence;
   }
   return measured;
 }
@@ -98,6 +113,31 @@ void AddSettings(const ScoreRunRequest& request, ResultTable& table,
     notes.push_back(
         fmt::format("{}: lists no run of batch {}; its coupons are scored without settings",
                     request.runs->file, fmt::join(unlisted, ", ")));
+  }
+}
+
+FeatureTable FeaturesOf(const ResultTable& table, const ResultRow& row) {
+  FeatureTable features;
+  for (size_t i = 0; i < table.feature_columns.size(); ++i) {
+    features[table.feature_columns[i]] = {row.features[i], std::nullopt};
+  }
+  return features;
+}
+
+// The chief fault of each row, and what a whole batch says about the extrusion.
+void AddFaults(const ScoreRunRequest& request, ResultTable& table,
+               std::vector<std::string>& notes) {
+  std::vector<std::pair<std::string, std::vector<JudgedRun>>> batches;
+  for (ResultRow& row : table.rows) {
+    if (row.status != CouponStatus::kOk) continue;
+    JudgedRun run{row.well, FeaturesOf(table, row), SettingsOf(request, row.batch, row.well)};
+    row.fault = ChiefFault(run.features, run.settings).name;
+    if (batches.empty() || batches.back().first != row.batch) batches.push_back({row.batch, {}});
+    batches.back().second.push_back(std::move(run));
+  }
+  for (const auto& [batch, runs] : batches) {
+    const std::string warning = ExtrusionWarning(batch, runs);
+    if (!warning.empty()) notes.push_back(warning);
   }
 }
 
@@ -146,6 +186,7 @@ Expected<ScoreRun> RunScoring(const ScoreRunRequest& request, const TakePhoto& t
   run.table.scale_name = request.scale.name;
   run.table.scale_remark = request.scale.remark;
   AddSettings(request, run.table, run.notes);
+  AddFaults(request, run.table, run.notes);
   return run;
 }
 

@@ -157,6 +157,14 @@ Json CouponJson(const CouponRecord& coupon) {
 
 }  // namespace
 
+FeatureTable FeaturesOf(const CouponRecord& coupon) {
+  FeatureTable features;
+  for (const NamedFeature& named : coupon.features) {
+    features[named.name] = {named.feature.value, named.feature.sd};
+  }
+  return features;
+}
+
 std::string FormatRecord(const PhotoRecord& record) {
   Json metrics = Json::object();
   for (const Metric& metric : MetricTable()) metrics[std::string(metric.name)] = metric.version;

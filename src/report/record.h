@@ -36,6 +36,9 @@ struct CouponRecord {
   std::string fault_evidence;
 };
 
+// A coupon's features as the scale reads them.
+[[nodiscard]] FeatureTable FeaturesOf(const CouponRecord& coupon);
+
 // Everything measured in one photo, with what made it.
 struct PhotoRecord {
   std::string file;  // without its folder

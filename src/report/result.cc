@@ -18,8 +18,9 @@ std::string_view StatusName(CouponStatus status) {
 
 const std::vector<std::string_view>& FixedResultColumns() {
   static const std::vector<std::string_view> columns{
-      "batch",    "well", "photo", "status",     "note",        "takes",       "score",   "loss",
-      "score_sd", "why",  "fault", "unfamiliar", "center_x_mm", "center_y_mm", "turn_deg"};
+      "batch",       "well",        "photo",    "status",    "note",   "takes",
+      "score",       "loss",        "score_sd", "why",       "fault",  "unfamiliar",
+      "center_x_mm", "center_y_mm", "turn_deg", "roughness", "defects"};
   return columns;
 }
 

@@ -12,7 +12,8 @@ namespace laygauge {
 namespace {
 
 std::vector<PhotoRecord> Measure() {
-  const std::filesystem::path samples = std::filesystem::path(LAYGAUGE_SOURCE_DIR) / "sample-images";
+  const std::filesystem::path samples =
+      std::filesystem::path(LAYGAUGE_SOURCE_DIR) / "sample-images";
   ScoreRunRequest request;
   for (int plate = 1; plate <= 7; ++plate) {
     request.photos.push_back(samples / ("d" + std::to_string(plate) + ".jpg"));
@@ -24,13 +25,12 @@ std::vector<PhotoRecord> Measure() {
   if (!list) throw std::runtime_error(list.error().message);
   request.photo_list = std::move(*list);
   std::vector<PhotoRecord> records;
-  const auto run = RunScoring(
-      request,
-      [&](const PhotoMeasurement& measured) -> Done {
-        records.push_back(measured.record);
-        return {};
-      },
-      {});
+  const auto run = RunScoring(request,
+                              [&](const PhotoMeasurement& measured) -> Done {
+                                records.push_back(measured.record);
+                                return {};
+                              },
+                              {});
   if (!run) throw std::runtime_error(run.error().message);
   if (!run->refused.empty()) throw std::runtime_error(run->refused.front().problem.message);
   return records;
