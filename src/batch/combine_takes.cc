@@ -46,7 +46,7 @@ std::vector<CouponTakes> GroupTakes(const std::vector<PhotoRecord>& records) {
 
 void AddNote(std::string& note, const std::string& more) {
   if (more.empty() || note.find(more) != std::string::npos) return;
-  note += (note.empty() ? "" : "; ") + more;
+  note += fmt::format("{}{}", note.empty() ? "" : "; ", more);
 }
 
 void PlaceOf(const CouponRecord& coupon, ResultRow& row) {

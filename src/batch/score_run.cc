@@ -104,7 +104,7 @@ void AddSettings(const ScoreRunRequest& request, ResultTable& table,
     if (!listed.contains(row.batch)) {
       unlisted.insert(row.batch);
     } else if (there && !known) {
-      row.note += (row.note.empty() ? "" : "; ") + std::string("not in the run sheet");
+      row.note += row.note.empty() ? "not in the run sheet" : "; not in the run sheet";
     } else if (!there && known && row.note.empty()) {
       row.note = "in the run sheet, but the well is empty";
     }
