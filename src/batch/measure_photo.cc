@@ -5,6 +5,7 @@
 #include <filesystem>
 #include <opencv2/core.hpp>
 
+#include "coupon/rectify.h"
 #include "grade/indices.h"
 #include "texture/metric.h"
 #include "texture/surface.h"
@@ -51,10 +52,12 @@ Expected<Patch> SharpPatch(const PhotoStages& stages, const Well& well,
   if (!patch) return patch;
   const double x_mm = placement.center_x_mm;
   const double y_mm = placement.center_y_mm;
+  const LocalSpread spread = stages.sharpness.At(x_mm, y_mm, placement.turn_deg);
   return Equalize(*patch,
                   {.where = fmt::format("{}, well {}", stages.photo.file, well.name),
-                   .spread = stages.sharpness.At(x_mm, y_mm, placement.turn_deg),
-                   .paper_light = stages.sharpness.paper.At(x_mm, y_mm),
+                   .spread = spread,
+                   .paper_light = stages.light.At(x_mm, y_mm),
+                   .resampling_sd_mm = ResamplingBlurSdMm(spread.px_per_mm, patch->px_per_mm),
                    .noise = stages.noise},
                   stages.options.equalize);
 }

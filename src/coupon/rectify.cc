@@ -169,13 +169,17 @@ double PhotoPixelsPerFramePixel(const NodeMap& map) {
   return std::max(across, down) / kNodeStep_px;
 }
 
-// Blurs so that nothing finer than the frame's pixels remains; no blur if nothing finer is there.
+// In pixels of the photo. A Gaussian of half a frame pixel passes 8 % of what lies at the frame's
+// sampling rate; the photo's own pixels already have their share of it.
+double ResamplingBlurSdPx(double photo_px_per_frame_px) {
+  if (photo_px_per_frame_px <= 1.05) return 0;  // nothing finer than the frame's pixels is there
+  return 0.5 * std::sqrt(photo_px_per_frame_px * photo_px_per_frame_px - 1);
+}
+
+// Blurs so that nothing finer than the frame's pixels remains.
 void LimitToFrame(double photo_px_per_frame_px, cv::Mat& linear) {
-  if (photo_px_per_frame_px <= 1.05) return;
-  // A Gaussian of half a frame pixel passes 8 % of what lies at the frame's sampling rate; the
-  // photo's own pixels already have their share of it.
-  const double sd_px = 0.5 * std::sqrt(photo_px_per_frame_px * photo_px_per_frame_px - 1);
-  cv::GaussianBlur(linear, linear, {}, sd_px, sd_px, cv::BORDER_REPLICATE);
+  const double sd_px = ResamplingBlurSdPx(photo_px_per_frame_px);
+  if (sd_px > 0) cv::GaussianBlur(linear, linear, {}, sd_px, sd_px, cv::BORDER_REPLICATE);
 }
 
 template <class Pixel>
@@ -212,6 +216,10 @@ cv::Point2d PlaneFrame::SheetFromFrame(cv::Point2d pixel) const {
   // Counter-clockwise as seen, in axes whose y points down.
   return center_mm + cv::Point2d(at_mm.x * std::cos(turn) + at_mm.y * std::sin(turn),
                                  -at_mm.x * std::sin(turn) + at_mm.y * std::cos(turn));
+}
+
+double ResamplingBlurSdMm(double photo_px_per_mm, double px_per_mm) {
+  return ResamplingBlurSdPx(photo_px_per_mm / px_per_mm) / photo_px_per_mm;
 }
 
 cv::Mat Rectify(const Photo& photo, const View& view, const PlaneFrame& frame) {

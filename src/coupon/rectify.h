@@ -35,6 +35,10 @@ struct PlaneFrame {
 // px at 10 px/mm and more). Outside the photo its edge is repeated; ask IsInPhoto.
 [[nodiscard]] cv::Mat Rectify(const Photo& photo, const View& view, const PlaneFrame& frame);
 
+// Standard deviation, mm, of the blur that Rectify adds where the photo shows `photo_px_per_mm` and
+// the frame has `px_per_mm`; 0 where the photo is no finer than the frame.
+[[nodiscard]] double ResamplingBlurSdMm(double photo_px_per_mm, double px_per_mm);
+
 // The same without linearising: encoded luma 0..1 by bilinear interpolation, CV_32FC1. A tenth of
 // the time; for finding things, not for measuring brightness.
 [[nodiscard]] cv::Mat RectifyEncoded(const Photo& photo, const View& view, const PlaneFrame& frame);
