@@ -23,6 +23,9 @@ PhotoRecord Photo(const std::string& batch, CouponStatus status, double pitch_mm
     for (const ScaleTerm& term : ShippedScale().terms) {
       coupon.features.push_back({term.range.feature, {term.range.low, 0.0, ""}});
     }
+    for (const FeatureRange& watched : ShippedScale().watched) {
+      coupon.features.push_back({watched.feature, {watched.low, 0.0, ""}});
+    }
     coupon.features.push_back({"x", {pitch_mm, 0.3, ""}});
   }
   record.coupons.push_back(coupon);
