@@ -4,9 +4,9 @@
 #include <unistd.h>
 
 #include <filesystem>
-#include <sstream>
 
 #include "base/file.h"
+#include "cli/run_with.h"
 #include "sheet/sheet_description.h"
 #include "support/doc_example.h"
 
@@ -14,23 +14,6 @@ namespace laygauge {
 namespace {
 
 namespace fs = std::filesystem;
-
-struct Outcome {
-  int code;
-  std::string out;
-  std::string err;
-};
-
-Outcome RunWith(const std::vector<std::string>& arguments) {
-  std::ostringstream out;
-  std::ostringstream err;
-  const int code = RunProgram(arguments, {out, err});
-  return {code, out.str(), err.str()};
-}
-
-bool IsOneLine(const std::string& text) {
-  return text.rfind("laygauge: ", 0) == 0 && text.find('\n') == text.size() - 1;
-}
 
 class ProgramTest : public ::testing::Test {
  protected:
