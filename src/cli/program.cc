@@ -6,6 +6,8 @@
 #include <opencv2/core/utility.hpp>
 
 #include "base/version.h"
+#include "cli/agree_command.h"
+#include "cli/calibrate_command.h"
 #include "cli/grade_command.h"
 #include "cli/score_command.h"
 #include "cli/sheet_command.h"
@@ -13,7 +15,8 @@
 namespace laygauge {
 namespace {
 
-constexpr std::array kCommands{AddSheetCommand, AddScoreCommand, AddGradeCommand};
+constexpr std::array kCommands{AddSheetCommand, AddScoreCommand, AddGradeCommand,
+                               AddCalibrateCommand, AddAgreeCommand};
 
 constexpr std::string_view kAbout =
     "laygauge scores the top surfaces of small printed coupons from a photograph.\n"
