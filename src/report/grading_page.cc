@@ -16,7 +16,7 @@
 
 namespace laygauge {
 
-const std::vector<EmbeddedFile>& EmbeddedPages();
+const std::vector<EmbeddedFile>& EmbeddedPages();  // the page, its script
 
 namespace {
 
@@ -91,6 +91,10 @@ std::string Base64(std::string_view bytes) {
   return text;
 }
 
+void Fill(std::string& text, std::string_view place, std::string_view with) {
+  text.replace(text.find(place), place.size(), with);
+}
+
 // Tells one page's kept judgements from another's (FNV-1a, 64 bit; Fowler, Noll & Vo 1991).
 std::string PageId(const nlohmann::json& page) {
   std::uint64_t hash = 14695981039346656037ULL;
@@ -138,9 +142,9 @@ std::string FormatGradingPage(const std::vector<GradingCoupon>& coupons,
   for (size_t at = json.find("</"); at != std::string::npos; at = json.find("</", at + 3)) {
     json.replace(at, 2, "<\\/");
   }
-  std::string html(EmbeddedPages().front().text);
-  constexpr std::string_view kPlace = "/*PAGE*/null";
-  html.replace(html.find(kPlace), kPlace.size(), json);
+  std::string html(EmbeddedPages()[0].text);
+  Fill(html, "/*SCRIPT*/", EmbeddedPages()[1].text);
+  Fill(html, "/*PAGE*/null", json);
   return html;
 }
 
