@@ -269,16 +269,22 @@ function goOn() {
 
 // Told only after all is saved: coupons come again unannounced.
 function steadiness() {
+  const slip = 4;  // so far apart, two grades of one coupon are refused by "laygauge calibrate"
   const first = new Map();
   const apart = [];
+  let text = "";
   page.items.forEach(([coupon], at) => {
-    if (first.has(coupon)) apart.push(Math.abs(state.given[at] - first.get(coupon)));
-    else first.set(coupon, state.given[at]);
+    if (!first.has(coupon)) return first.set(coupon, at);
+    const before = first.get(coupon);
+    apart.push(Math.abs(state.given[at] - state.given[before]));
+    if (apart.at(-1) < slip) return;
+    text += ` Pictures ${before + 1} and ${at + 1} are one coupon, graded ` +
+        `${state.given[before]} and ${state.given[at]}: correct the slip, and save again.`;
   });
   if (apart.length === 0) return "";
   const mean = apart.reduce((a, b) => a + b, 0) / apart.length;
   return ` ${count(apart.length, "coupon", "coupons")} came twice: your two grades of one were ` +
-      `${mean.toFixed(2)} apart on average.`;
+      `${mean.toFixed(2)} apart on average.` + text;
 }
 
 const field = (text) => /[",\r\n]/.test(text) ? '"' + text.replaceAll('"', '""') + '"' : text;
