@@ -46,6 +46,7 @@ std::vector<std::vector<int>> GradeOrder(int coupons, int repeats, std::mt19937_
                  early[static_cast<size_t>(index)]);
   }
   std::vector<std::vector<int>> items;
+  items.reserve(order.size());
   for (const int coupon : order) items.push_back({coupon});
   return items;
 }
