@@ -28,6 +28,7 @@ from selenium.webdriver.common.action_chains import ActionChains
 from selenium.webdriver.common.by import By
 from selenium.webdriver.common.keys import Keys
 
+PROJECT = Path(__file__).resolve().parents[2]
 PROGRAM = "laygauge"
 BATCH = "kestrel"
 WELLS = ["A1", "A2", "A3", "B1", "B2", "B3"]
@@ -152,10 +153,13 @@ class GradingPageTest(unittest.TestCase):
         for file in (self.folder / "downloads").iterdir():
             file.unlink()
 
+    def run_program(self, *arguments):
+        done = subprocess.run([PROGRAM, *arguments], text=True, capture_output=True, check=False)
+        self.assertEqual(done.returncode, 0, done.stderr)
+        return done.stdout
+
     def page(self, *options):
-        made = subprocess.run([PROGRAM, "grade", str(self.results), *options], text=True,
-                              capture_output=True, check=False)
-        self.assertEqual(made.returncode, 0, made.stderr)
+        self.run_program("grade", self.results, *options)
         page = Page(self.browser, self.results / "grading.html", self.folder / "downloads")
         page.script("localStorage.clear()")  # what another test's grader gave
         return Page(self.browser, self.results / "grading.html", self.folder / "downloads")
@@ -231,10 +235,7 @@ class GradingPageTest(unittest.TestCase):
         # A second grader, so that there is something to agree with.
         other = file.with_name("other.csv")
         other.write_text(file.read_text().replace("ash,", "birch,"))
-        read = subprocess.run([PROGRAM, "agree", str(file), str(other)], text=True,
-                              capture_output=True, check=False)
-        self.assertEqual(read.returncode, 0, read.stderr)
-        self.assertIn("ash", read.stdout)
+        self.assertIn("ash", self.run_program("agree", file, other))
 
     def test_a_slip_is_pointed_out_after_saving(self):
         page = self.page("--repeats", "1")
@@ -431,6 +432,40 @@ class GradingPageTest(unittest.TestCase):
                                    "worse_well"])
         self.assertEqual(rows[1:], [["ash", BATCH, better, BATCH, worse]
                                     for better, worse in filter(None, told)])
+
+    def test_what_is_saved_makes_a_scale(self):
+        # The sample plate's 15 coupons, judged as the panel's mean would.
+        plates = PROJECT / "sample-images"
+        self.results = self.folder / "plate"
+        self.run_program("score", plates / "d1.jpg", "--photos", plates / "photos.csv",
+                         "--out", self.results)
+        grades = {}
+        with open(plates / "panel.csv", newline="", encoding="utf-8") as file:
+            for row in csv.DictReader(file):
+                if row["batch"] == "b1":
+                    grades.setdefault(row["well"], []).append(float(row["grade"]))
+        panel = {well: sum(given) / len(given) for well, given in grades.items()}
+
+        page = self.page("--repeats", "0", "--suggest", "8")
+        page.begin("ash")
+        for _ in range(8):
+            half_steps = round(panel[page.shown()[0]] * 2)
+            page.keys("0" if half_steps >= 20 else str(half_steps // 2))
+            page.keys(*["."] * (half_steps % 2), Keys.ENTER)
+        page.click("save")
+        self.assertEqual(len(page.saved("grades-ash.csv")), 1 + 8)
+        self.run_program("calibrate", "--results", self.results, "--grades",
+                         page.downloads / "grades-ash.csv", "--out", self.results / "ash.json")
+
+        page = self.page("--pairs", "--count", "20")
+        page.begin("ash")
+        for _ in range(20):
+            left, right = page.shown()
+            page.keys(Keys.ARROW_LEFT if panel[left] > panel[right] else Keys.ARROW_RIGHT)
+        page.click("save")
+        self.assertEqual(len(page.saved("pairs-ash.csv")), 1 + 20)
+        self.run_program("calibrate", "--results", self.results, "--pairs",
+                         page.downloads / "pairs-ash.csv", "--out", self.results / "pairs.json")
 
     def test_graders_take_turns_and_lose_nothing(self):
         page = self.page("--repeats", "0")
