@@ -88,8 +88,10 @@ Expected<std::vector<CouponName>> MeasuredCouponsOf(const fs::path& folder) {
 // The coupons whose grades would teach the scale most; says what they would bring.
 Expected<std::vector<CouponName>> SuggestedCouponsOf(const GradeOptions& options,
                                                      const Terminal& terminal) {
-  const auto named = ScaleNamed(options.scale);
+  auto named = ScaleNamed(options.scale);
   if (!named) return tl::unexpected(named.error());
+  // The shipped scale learnt from other people's coupons, even if some are named like these.
+  if (options.scale.empty()) named->scale.coupons.clear();
   if (auto same = CheckMetricVersions(named->scale, MetricTable(), named->source); !same) {
     return tl::unexpected(same.error());
   }
