@@ -55,6 +55,26 @@ Done CheckRunSheet(const ScoreRunRequest& request, const std::vector<OpenedPhoto
   return {};
 }
 
+std::vector<std::pair<std::string, double>> OptionsOf(const ScoreRunRequest& request) {
+  const EstimateCameraOptions& camera = request.camera;
+  const MeasurePhotoOptions& measure = request.measure;
+  return {{"camera.focal_model_sd", camera.focal_model_sd},
+          {"camera.untagged_focal_35mm", camera.untagged_focal_35mm},
+          {"camera.untagged_focal_log_sd", camera.untagged_focal_log_sd},
+          {"camera.center_sd", camera.center_sd},
+          {"camera.most_rms_px", camera.most_rms_px},
+          {"camera.most_rms_mm", camera.most_rms_mm},
+          {"camera.least_px_per_mm", camera.least_px_per_mm},
+          {"light.degree", measure.light.degree},
+          {"locate.reach_mm", measure.locate.reach_mm},
+          {"locate.turn_reach_deg", measure.locate.turn_reach_deg},
+          {"regions.px_per_mm", measure.regions.px_per_mm},
+          {"regions.field_from_outline_mm", measure.regions.field_from_outline_mm},
+          {"regions.field_from_hole_mm", measure.regions.field_from_hole_mm},
+          {"equalize.working_blur_sd_mm", measure.equalize.working_blur_sd_mm},
+          {"equalize.max_gain", measure.equalize.max_gain}};
+}
+
 // The stage of one photo, from its camera to its record.
 Expected<PhotoMeasurement> MeasureOpened(const ScoreRunRequest& request,
                                          const CouponRegions& regions, OpenedPhoto& opened,
@@ -76,6 +96,7 @@ Expected<PhotoMeasurement> MeasureOpened(const ScoreRunRequest& request,
   record.filament = entry.filament;
   record.scale_name = request.scale.name;
   record.scale_hash = ScaleContentHash(request.scale);
+  record.options = OptionsOf(request);
   const auto& found_notes = opened.sighting.found.notes;
   record.notes.insert(record.notes.begin(), found_notes.begin(), found_notes.end());
   for (CouponRecord& coupon : record.coupons) {
@@ -87,6 +108,21 @@ Expected<PhotoMeasurement> MeasureOpened(const ScoreRunRequest& request,
     coupon.fault_evidence = fault.evidence;
   }
   return measured;
+}
+
+PhotoSummary SummaryOf(const ScoreRunRequest& request, const PhotoRecord& record) {
+  PhotoSummary summary{.file = record.file,
+                       .sheet = record.sheet,
+                       .rms_px = record.camera.rms_px,
+                       .rms_mm = record.camera.rms_mm,
+                       .least_px_per_mm = record.camera.least_px_per_mm};
+  for (const MarkerResidual& marker : record.camera.markers) summary.markers_used += marker.used;
+  for (const SheetDescription& sheet : request.sheets) {
+    if (sheet.name == record.sheet) {
+      summary.markers_on_sheet = static_cast<int>(sheet.markers.size());
+    }
+  }
+  return summary;
 }
 
 // Settings from the run sheet; what it does not list is noted.
@@ -175,7 +211,7 @@ Expected<ScoreRun> RunScoring(const ScoreRunRequest& request, const TakePhoto& t
     }
     if (progress) progress(static_cast<int>(request.photos.size() + i + 1));
   }
-  run.photos_scored = static_cast<int>(records.size());
+  for (const PhotoRecord& record : records) run.photos.push_back(SummaryOf(request, record));
 
   run.table.feature_columns = FeatureColumns();
   run.table.rows = request.each_take

@@ -38,11 +38,22 @@ struct ScoreRunRequest {
 // one thread, photos in the order given. A Problem ends the run.
 using TakePhoto = std::function<Done(const PhotoMeasurement&)>;
 
+// How well a photo could be measured as a whole.
+struct PhotoSummary {
+  std::string file;
+  std::string sheet;
+  int markers_used = 0;
+  int markers_on_sheet = 0;
+  double rms_px = 0;  // reprojection
+  double rms_mm = 0;
+  double least_px_per_mm = 0;
+};
+
 struct ScoreRun {
   ResultTable table;
   std::vector<RefusedPhoto> refused;  // the photos that could not be used, and why
   std::vector<std::string> notes;     // for the person: one sentence each
-  int photos_scored = 0;
+  std::vector<PhotoSummary> photos;   // those that were measured
 };
 
 // Photographs to scores. Problem: what is wrong with the request as a whole (an unknown well in the

@@ -159,7 +159,7 @@ ExitCode Finish(const ScoreOptions& options, const ScoreRun& run, const Terminal
   for (const RefusedPhoto& refused : run.refused) {
     code = Report(terminal, refused.problem);
   }
-  if (run.photos_scored == 0) return code;
+  if (run.photos.empty()) return code;
   if (auto done = WriteFileWhole(options.out / "scores.csv", FormatScoresCsv(run.table)); !done) {
     return Report(terminal, done.error());
   }
@@ -167,6 +167,13 @@ ExitCode Finish(const ScoreOptions& options, const ScoreRun& run, const Terminal
     terminal.out << FormatScoresJson(run.table);
   } else {
     terminal.out << FormatScoreTable(run.table, {.colour = terminal.color_out});
+    terminal.out << '\n';
+    for (const PhotoSummary& photo : run.photos) {
+      terminal.out << fmt::format(
+          "{}: sheet {}, {} of {} markers, reprojection {:.2f} px ({:.3f} mm), {:.1f} px/mm\n",
+          photo.file, photo.sheet, photo.markers_used, photo.markers_on_sheet, photo.rms_px,
+          photo.rms_mm, photo.least_px_per_mm);
+    }
     terminal.out << fmt::format("\nTable:    {}\n", (options.out / "scores.csv").string());
     if (options.pictures != "none") {
       terminal.out << fmt::format("Pictures: {}\n", (options.out / "pictures").string());
@@ -174,6 +181,13 @@ ExitCode Finish(const ScoreOptions& options, const ScoreRun& run, const Terminal
     terminal.out << fmt::format("Records:  {}\n", (options.out / "records").string());
   }
   return run.refused.empty() ? kExitDone : kExitDoneInPart;
+}
+
+// Keys of a description that the program does not know: reported, and nothing else.
+void NoteUnknown(const std::vector<std::string>& keys, const Terminal& terminal) {
+  for (const std::string& key : keys) {
+    terminal.err << fmt::format("note: {}: this key is not known and is not used\n", key);
+  }
 }
 
 int Run(const ScoreOptions& options, const Terminal& terminal) {
@@ -186,11 +200,13 @@ int Run(const ScoreOptions& options, const Terminal& terminal) {
     folder.RemoveIfEmpty();
     return Report(terminal, done.error());
   }
+  for (const SheetDescription& sheet : request->sheets) NoteUnknown(sheet.unknown_keys, terminal);
+  NoteUnknown(request->coupon.unknown_keys, terminal);
   const auto run = RunScoring(
       *request,
       [&](const PhotoMeasurement& measured) { return folder.Keep(measured, request->coupon); },
       ProgressOn(terminal, options.photos.size()));
-  if (!run || run->photos_scored == 0) folder.RemoveIfEmpty();
+  if (!run || run->photos.empty()) folder.RemoveIfEmpty();
   if (!run) return Report(terminal, run.error());
   return Finish(options, *run, terminal);
 }

@@ -168,6 +168,8 @@ FeatureTable FeaturesOf(const CouponRecord& coupon) {
 std::string FormatRecord(const PhotoRecord& record) {
   Json metrics = Json::object();
   for (const Metric& metric : MetricTable()) metrics[std::string(metric.name)] = metric.version;
+  Json options = Json::object();
+  for (const auto& [name, value] : record.options) options[name] = value;
   Json json{{"format", kRecordFormat},
             {"program", ProgramVersion()},
             {"photo", record.file},
@@ -184,6 +186,7 @@ std::string FormatRecord(const PhotoRecord& record) {
             {"scale", record.scale_name},
             {"scale_content", record.scale_hash},
             {"metric_versions", metrics},
+            {"options", options},
             {"notes", record.notes},
             {"camera", CameraJson(record.camera)},
             {"light", LightJson(record.light)},

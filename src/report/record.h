@@ -2,6 +2,7 @@
 
 #include <optional>
 #include <string>
+#include <utility>
 #include <vector>
 
 #include "coupon/light.h"
@@ -58,6 +59,7 @@ struct PhotoRecord {
   double px_per_mm = 20;  // of the patches
   std::string scale_name;
   std::string scale_hash;
+  std::vector<std::pair<std::string, double>> options;  // of the stages, as used
   std::vector<std::string> notes;
   std::vector<CouponRecord> coupons;
 };
