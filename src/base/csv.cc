@@ -35,6 +35,28 @@ struct CsvParserHandle {
   CsvParserHandle& operator=(const CsvParserHandle&) = delete;
 };
 
+// RFC 3629, section 4: without overlong forms, surrogates, or anything beyond U+10FFFF.
+bool IsUtf8(std::string_view text) {
+  for (size_t i = 0; i < text.size();) {
+    const auto byte = [&](size_t at) {
+      return at < text.size() ? static_cast<unsigned char>(text[at]) : 0U;
+    };
+    const unsigned lead = byte(i);
+    const size_t length = lead < 0x80 ? 1 : lead < 0xE0 ? 2 : lead < 0xF0 ? 3 : 4;
+    if ((lead >= 0x80 && lead < 0xC2) || lead > 0xF4) return false;
+    for (size_t k = 1; k < length; ++k) {
+      if (byte(i + k) >> 6 != 0b10) return false;
+    }
+    const unsigned second = byte(i + 1);
+    if ((lead == 0xE0 && second < 0xA0) || (lead == 0xED && second > 0x9F) ||
+        (lead == 0xF0 && second < 0x90) || (lead == 0xF4 && second > 0x8F)) {
+      return false;
+    }
+    i += length;
+  }
+  return true;
+}
+
 // Feeds byte by byte up to each line break, so that a record's first line is known.
 Expected<std::monostate> Parse(std::string_view text, const std::string& file, CsvRecords& out,
                                std::vector<size_t>& first_lines) {
@@ -51,6 +73,10 @@ Expected<std::monostate> Parse(std::string_view text, const std::string& file, C
     const size_t end = newline == std::string_view::npos ? text.size() : newline + 1;
     const size_t records_before = out.records.size();
     const size_t size = end - begin;
+    if (!IsUtf8(text.substr(begin, size))) {
+      return BadInput(
+          fmt::format("{}, line {}: is not UTF-8; save the file as CSV in UTF-8", file, line));
+    }
     if (csv_parse(&handle.parser, text.data() + begin, size, on_field, on_record, &out) != size) {
       return BadInput(fmt::format("{}, line {}: not CSV: a quote stands where none may (RFC 4180)",
                                   file, line));

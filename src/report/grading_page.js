@@ -36,8 +36,11 @@ const keep = () => keepText(stateKey(grader), JSON.stringify(state));
 function recall(name) {
   grader = name;
   state = {at: 0, given: {}, zoom: null};
-  const text = keptText(stateKey(grader));
-  if (text !== null) Object.assign(state, JSON.parse(text));
+  try {
+    Object.assign(state, JSON.parse(keptText(stateKey(grader))));
+  } catch (error) {
+    // Damaged from outside: the page must still open.
+  }
   keepText(graderKey, grader);
 }
 

@@ -49,6 +49,28 @@ TEST(Csv, RefusesWithFileAndLine) {
             "t.csv, line 2: not CSV: a quote stands where none may (RFC 4180)");
 }
 
+TEST(Csv, TakesUtf8AndNothingElse) {
+  // Examples of RFC 3629, section 7, and the ends of each length (section 4).
+  for (const std::string text :
+       {"A\xE2\x89\xA2\xCE\x91.", "\xED\x95\x9C\xEA\xB5\xAD\xEC\x96\xB4", "\xF0\xA3\x8E\xB4",
+        "\xC2\x80", "\xDF\xBF", "\xE0\xA0\x80", "\xED\x9F\xBF", "\xEE\x80\x80", "\xEF\xBF\xBF",
+        "\xF0\x90\x80\x80", "\xF4\x8F\xBF\xBF"}) {
+    const auto table = ParseCsv("a\n" + text, "t.csv");
+    ASSERT_TRUE(table) << table.error().message;
+    EXPECT_EQ(table->rows[0][0], text);
+  }
+  // Latin-1, an overlong slash and NUL (section 10), a surrogate, too far, cut short, a stray tail.
+  for (const std::string text :
+       {"Gr\xF6\xDF"
+        "e",
+        "\xC0\xAF", "\xC0\x80", "\xE0\x9F\xBF", "\xF0\x8F\xBF\xBF", "\xED\xA0\x80",
+        "\xF4\x90\x80\x80", "\xF5\x80\x80\x80", "\xE2\x89", "\xF0\xA3\x8E", "\xA2", "\xFF\xFE"}) {
+    const auto table = ParseCsv("a\nb\n" + text + "\n", "t.csv");
+    ASSERT_FALSE(table);
+    EXPECT_EQ(table.error().message, "t.csv, line 3: is not UTF-8; save the file as CSV in UTF-8");
+  }
+}
+
 TEST(Csv, NumbersHaveAPointAndAreWhole) {
   EXPECT_EQ(ParseNumber("1.5"), 1.5);
   EXPECT_EQ(ParseNumber(" +2e3 "), 2000);
