@@ -3,7 +3,11 @@
 
 #include <gtest/gtest.h>
 
+#include <algorithm>
 #include <cmath>
+#include <map>
+#include <string>
+#include <vector>
 
 #include "base/statistics.h"
 #include "batch/measured_plates.h"
@@ -54,6 +58,102 @@ TEST(SamplePlates, PitchAndLayAreTrue) {
   }
   ASSERT_FALSE(pitch_errors_pct.empty());
   EXPECT_LE(Median(pitch_errors_pct), 0.15);
+}
+
+// Measured and true values of the coupons that did not fail; where the metric has a value.
+struct Compared {
+  std::vector<double> measured;
+  std::vector<double> told;
+};
+
+Compared Compare(const std::string& feature, const std::string& truth) {
+  Compared compared;
+  for (const MeasuredCoupon& coupon : MeasuredCoupons()) {
+    const auto value = coupon.Value(feature);
+    if (coupon.truth.kind == "delaminated" || !value) continue;
+    compared.measured.push_back(*value);
+    compared.told.push_back(coupon.truth.numbers.at(truth));
+  }
+  return compared;
+}
+
+// Promised: within 0.5 percentage points or 25 %, whichever is larger, on 9 of 10 coupons.
+TEST(SamplePlates, GapAreaIsWithinItsTolerance) {
+  const Compared gaps = Compare("gap_area_pct", "gap_area_pct");
+  ASSERT_EQ(gaps.told.size(), 47U);
+  double within = 0;
+  for (size_t i = 0; i < gaps.told.size(); ++i) {
+    const double allowed_pct = std::max(0.5, 0.25 * gaps.told[i]);
+    within += std::abs(gaps.measured[i] - gaps.told[i]) <= allowed_pct ? 1 : 0;
+  }
+  EXPECT_GE(within, 0.9 * static_cast<double>(gaps.told.size()));
+}
+
+// Promised: a rank correlation of 0.85 with the truth. Blobs (0.82 over all seven plates, under two
+// strips of light 5 of 9 are seen) and the ranks of gap areas (0.92 for 0.95) fall short
+// (docs/validation.md) and are not asserted.
+TEST(SamplePlates, DefectsAreInTheirTrueOrder) {
+  const auto rank = [](const char* feature, const char* truth) {
+    const Compared compared = Compare(feature, truth);
+    return RankCorrelation(compared.measured, compared.told);
+  };
+  EXPECT_GE(rank("scar_length_mm", "scar_length_mm"), 0.85);
+  EXPECT_GE(rank("wall_gap_mean_mm", "ring_gap_mm"), 0.85);
+  EXPECT_GE(rank("ridge_um", "ridge_um"), 0.85);
+}
+
+// Promised: scars of 10 mm found, 9 of 10; at most one false scar on 10 coupons.
+TEST(SamplePlates, ScarsAreFoundAndNotInvented) {
+  const Compared scars = Compare("scar_count", "scar_length_mm");
+  double scarred = 0;
+  double found = 0;
+  double clean = 0;
+  double invented = 0;
+  for (size_t i = 0; i < scars.told.size(); ++i) {
+    if (scars.told[i] >= 10) {
+      scarred += 1;
+      found += scars.measured[i] > 0 ? 1 : 0;
+    } else if (scars.told[i] == 0) {
+      clean += 1;
+      invented += scars.measured[i];
+    }
+  }
+  ASSERT_GE(scarred, 20);
+  ASSERT_GE(clean, 20);
+  EXPECT_GE(found, 0.9 * scarred);
+  EXPECT_LE(invented, 0.1 * clean);
+}
+
+// Promised: all failed coupons found, no other called failed.
+TEST(SamplePlates, ThoseThatFailedAndNoOthersAreCalledFailed) {
+  for (const MeasuredCoupon& coupon : MeasuredCoupons()) {
+    EXPECT_EQ(coupon.record->fault == "failed", coupon.truth.kind == "delaminated")
+        << coupon.Name() << " is " << coupon.truth.kind << ", its fault is \""
+        << coupon.record->fault << "\"";
+  }
+}
+
+// Standard deviation of one score, points: root of half the mean square difference of two photos
+// of the same coupons.
+double ScoreDeviation(const std::string& plate, const std::string& other_plate) {
+  std::map<std::string, double> scores;
+  std::vector<double> squares;
+  for (const MeasuredCoupon& coupon : MeasuredCoupons()) {
+    if (coupon.plate == plate) scores[coupon.record->well] = coupon.record->score->value;
+  }
+  for (const MeasuredCoupon& coupon : MeasuredCoupons()) {
+    if (coupon.plate != other_plate) continue;
+    const double step = coupon.record->score->value - scores.at(coupon.record->well);
+    squares.push_back(step * step);
+  }
+  return std::sqrt(Mean(squares) / 2);
+}
+
+// Promised: 0.08 points laid anew in the same lightbox, 0.25 with another camera, distance and
+// light.
+TEST(SamplePlates, TheSameCouponsScoreTheSame) {
+  EXPECT_LE(ScoreDeviation("d2", "d7"), 0.08);
+  EXPECT_LE(ScoreDeviation("d2", "d3"), 0.25);
 }
 
 // Common practice: grade 1 is a delaminated print, 10 is as good as ironed.
