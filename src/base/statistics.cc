@@ -29,13 +29,13 @@ double StandardDeviation(std::span<const double> values) {
 
 double Quantile(std::span<const double> values, double p) {
   NeedValues(values);
-  std::vector<double> sorted(values.begin(), values.end());
-  std::sort(sorted.begin(), sorted.end());
-  const double position = std::clamp(p, 0.0, 1.0) * static_cast<double>(sorted.size() - 1);
-  const auto below = static_cast<size_t>(position);
-  const size_t above = std::min(below + 1, sorted.size() - 1);
-  const double fraction = position - static_cast<double>(below);
-  return sorted[below] + fraction * (sorted[above] - sorted[below]);
+  std::vector<double> parted(values.begin(), values.end());
+  const double position = std::clamp(p, 0.0, 1.0) * static_cast<double>(parted.size() - 1);
+  const auto below = parted.begin() + static_cast<std::ptrdiff_t>(position);
+  std::nth_element(parted.begin(), below, parted.end());
+  const auto next = below + 1;
+  const double above = next == parted.end() ? *below : *std::min_element(next, parted.end());
+  return *below + (position - std::floor(position)) * (above - *below);
 }
 
 double Median(std::span<const double> values) { return Quantile(values, 0.5); }

@@ -4,6 +4,7 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
+#include <cstdint>
 #include <numeric>
 
 namespace laygauge {
@@ -44,6 +45,40 @@ float Bilinear(const cv::Mat& picture, double x, double y) {
   const float* q = picture.ptr<float>(row + 1) + column;
   const float upper = p[0] + right * (p[1] - p[0]);
   return upper + down * (q[0] + right * (q[1] - q[0]) - upper);
+}
+
+// Adds the picture's values at start + k * step, k = 0, 1, ..., to `sums`.
+void AddProfile(const cv::Mat& picture, const cv::Point2d& start, const cv::Point2d& step,
+                std::vector<double>& sums) {
+  const auto is_inside = [&](const cv::Point2d& at) {
+    return at.x >= 0 && at.y >= 0 && at.x <= picture.cols - 1.001 && at.y <= picture.rows - 1.001;
+  };
+  if (!is_inside(start) || !is_inside(start + step * static_cast<double>(sums.size()))) {
+    for (size_t k = 0; k < sums.size(); ++k) {
+      const cv::Point2d at = start + step * static_cast<double>(k);
+      sums[k] += Bilinear(picture, at.x, at.y);
+    }
+    return;
+  }
+  // Fixed point: a fifth of the time.
+  constexpr double kOne = 1LL << 32;
+  constexpr float kPart = 1.F / (1 << 16);
+  auto x = static_cast<std::int64_t>(start.x * kOne);
+  auto y = static_cast<std::int64_t>(start.y * kOne);
+  const auto step_x = static_cast<std::int64_t>(step.x * kOne);
+  const auto step_y = static_cast<std::int64_t>(step.y * kOne);
+  const auto stride = static_cast<std::int64_t>(picture.step1());
+  const auto* data = picture.ptr<float>();
+  for (double& sum : sums) {
+    const float* p = data + (y >> 32) * stride + (x >> 32);
+    const float* q = p + stride;
+    const auto right = static_cast<float>(static_cast<int>(x >> 16) & 0xffff) * kPart;
+    const auto down = static_cast<float>(static_cast<int>(y >> 16) & 0xffff) * kPart;
+    const float upper = p[0] + right * (p[1] - p[0]);
+    sum += upper + down * (q[0] + right * (q[1] - q[0]) - upper);
+    x += step_x;
+    y += step_y;
+  }
 }
 
 // The extreme that best is the one expected at `expected_mm`, and the weight of that; 0: none. One
@@ -112,17 +147,13 @@ struct Fitter {
 // Mean brightness along the piece, from kProfileReach_mm inward, every kProfileStep_mm outward.
 void Fitter::TakeProfile(const EdgePiece& piece, int count) {
   profile.assign(count, 0.0);
-  const double mean = 1.0 / static_cast<double>(piece.points_mm.size());
+  const Turn turn(pose.turn_deg);
   for (size_t i = 0; i < piece.points_mm.size(); ++i) {
-    const cv::Point2d outward = Turned(piece.outward[i], pose.turn_deg) * px_per_mm;
-    const cv::Point2d start_px =
-        (pose.center_mm + Turned(piece.points_mm[i], pose.turn_deg)) * px_per_mm + origin_px -
-        outward * kProfileReach_mm;
-    for (int k = 0; k < count; ++k) {
-      const cv::Point2d at_px = start_px + outward * (k * kProfileStep_mm);
-      profile[k] += mean * Bilinear(picture, at_px.x, at_px.y);
-    }
+    const cv::Point2d outward = turn(piece.outward[i]) * px_per_mm;
+    const cv::Point2d edge_px = (pose.center_mm + turn(piece.points_mm[i])) * px_per_mm + origin_px;
+    AddProfile(picture, edge_px - outward * kProfileReach_mm, outward * kProfileStep_mm, profile);
   }
+  for (double& value : profile) value /= static_cast<double>(piece.points_mm.size());
 }
 
 // Extremes of slope across the piece, from inward of its edge to outward of its wall's foot.

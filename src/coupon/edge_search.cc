@@ -4,6 +4,8 @@
 #include <cmath>
 #include <opencv2/imgproc.hpp>
 
+#include "base/vectorize.h"
+
 namespace laygauge {
 namespace {
 
@@ -12,18 +14,43 @@ namespace {
 constexpr float kHalfScore_per_mm = 0.15F;
 constexpr double kVisibleFoot_mm = 0.15;  // closer, edge and foot blur into one
 
-// Steps across one line of points, for all shifts of the grid: side x side values, row by row.
-void AddSteps(const GradientPicture& gradient, const cv::Point2d& first_px,
-              const cv::Point2f& outward, int side, std::vector<float>& steps) {
-  const int x0 = std::clamp(static_cast<int>(std::lround(first_px.x)), 0,
-                            std::max(0, gradient.by_x.cols - side));
-  const int y0 = std::clamp(static_cast<int>(std::lround(first_px.y)), 0,
-                            std::max(0, gradient.by_x.rows - side));
+constexpr int kWide = 8;  // shifts that are looked at together
+
+// A point of an edge in the grid's first position: the gradient's two parts there, weighted by the
+// outward direction.
+struct EdgePoint {
+  const float* by_x;
+  const float* by_y;
+  float outward_x;
+  float outward_y;
+};
+
+// Adds the steps across the points for all shifts of the grid: `side` rows of kWide times `blocks`.
+LAYGAUGE_WIDE_VECTORS
+void AddSteps(const std::vector<EdgePoint>& points, size_t stride, int side, int blocks,
+              float* steps) {
   for (int y = 0; y < side; ++y) {
-    const float* gx = gradient.by_x.ptr<float>(y0 + y) + x0;
-    const float* gy = gradient.by_y.ptr<float>(y0 + y) + x0;
-    float* out = steps.data() + static_cast<size_t>(y) * side;
-    for (int x = 0; x < side; ++x) out[x] += gx[x] * outward.x + gy[x] * outward.y;
+    for (int block = 0; block < blocks; ++block) {
+      const size_t offset = static_cast<size_t>(y) * stride + static_cast<size_t>(block) * kWide;
+      float sums[kWide] = {};
+      for (const EdgePoint& point : points) {
+        const float* gx = point.by_x + offset;
+        const float* gy = point.by_y + offset;
+        for (int i = 0; i < kWide; ++i) {
+          sums[i] += gx[i] * point.outward_x + gy[i] * point.outward_y;
+        }
+      }
+      float* out = steps + (static_cast<size_t>(y) * blocks + block) * kWide;
+      for (int i = 0; i < kWide; ++i) out[i] = sums[i];
+    }
+  }
+}
+
+LAYGAUGE_WIDE_VECTORS
+void ScoreSteps(float mean, std::vector<float>& steps) {
+  for (float& step : steps) {
+    const float size = std::abs(step) * mean;
+    step = size / (size + kHalfScore_per_mm);
   }
 }
 
@@ -33,41 +60,65 @@ struct PieceScorer {
   const WallView& wall;
   int reach_px = 0;
   int side = 0;
+  int blocks = 0;
+  std::vector<EdgePoint> points{};
   std::vector<float> edge{};
   std::vector<float> foot{};
 
-  void Steps(const EdgePiece& piece, double turn_deg, double outward_mm,
-             std::vector<float>& steps) const {
-    std::fill(steps.begin(), steps.end(), 0.F);
+  void Steps(const EdgePiece& piece, const Turn& turn, double outward_mm,
+             std::vector<float>& steps) {
     const cv::Point2d corner = grid.middle.center_mm * gradient.px_per_mm + gradient.origin_px -
                                cv::Point2d(reach_px, reach_px);
+    const int last_x = std::max(0, gradient.by_x.cols - side);
+    const int last_y = std::max(0, gradient.by_x.rows - side);
+    points.clear();
     for (size_t i = 0; i < piece.points_mm.size(); ++i) {
       const cv::Point2d point_mm = piece.points_mm[i] + piece.outward[i] * outward_mm;
-      AddSteps(gradient, corner + Turned(point_mm, turn_deg) * gradient.px_per_mm,
-               Turned(piece.outward[i], turn_deg), side, steps);
+      const cv::Point2d first_px = corner + turn(point_mm) * gradient.px_per_mm;
+      const cv::Point2f outward = turn(piece.outward[i]);
+      const int x = std::clamp(static_cast<int>(std::lround(first_px.x)), 0, last_x);
+      const int y = std::clamp(static_cast<int>(std::lround(first_px.y)), 0, last_y);
+      points.push_back(
+          {gradient.by_x.ptr<float>(y) + x, gradient.by_y.ptr<float>(y) + x, outward.x, outward.y});
     }
-    const float mean = 1.F / static_cast<float>(piece.points_mm.size());
-    for (float& step : steps) {
-      const float size = std::abs(step) * mean;
-      step = size / (size + kHalfScore_per_mm);
-    }
+    AddSteps(points, gradient.by_x.step1(), side, blocks, steps.data());
+    ScoreSteps(1.F / static_cast<float>(piece.points_mm.size()), steps);
   }
 
-  void Add(const EdgePiece& piece, double turn_deg, float weight, std::vector<float>& scores) {
-    Steps(piece, turn_deg, 0, edge);
-    const double foot_mm =
-        wall.FootOutward_mm(grid.middle.center_mm + Turned(piece.middle_mm, turn_deg),
-                            Turned(piece.middle_outward, turn_deg));
+  void Add(const EdgePiece& piece, const Turn& turn, float weight, std::vector<float>& scores) {
+    Steps(piece, turn, 0, edge);
+    const double foot_mm = wall.FootOutward_mm(grid.middle.center_mm + turn(piece.middle_mm),
+                                               turn(piece.middle_outward));
     if (foot_mm < kVisibleFoot_mm) {
       for (size_t i = 0; i < scores.size(); ++i) scores[i] += weight * edge[i];
       return;
     }
-    Steps(piece, turn_deg, foot_mm, foot);
+    Steps(piece, turn, foot_mm, foot);
     for (size_t i = 0; i < scores.size(); ++i) {
       scores[i] += weight * 0.5F * (edge[i] + foot[i]);
     }
   }
+
+  // The highest of the scores of true shifts, and its shift.
+  ScoredPose Best(const std::vector<float>& scores, double turn_deg) const {
+    float top = -1;
+    cv::Point2d shift_px;
+    for (int y = 0; y < side; ++y) {
+      const float* row = scores.data() + static_cast<size_t>(y) * blocks * kWide;
+      const float* highest = std::max_element(row, row + side);
+      if (*highest <= top) continue;
+      top = *highest;
+      shift_px = cv::Point2d(static_cast<double>(highest - row) - reach_px, y - reach_px);
+    }
+    return {{grid.middle.center_mm + shift_px / gradient.px_per_mm, turn_deg}, top};
+  }
 };
+
+// A picture whose rows can be read kWide - 1 pixels beyond their end.
+cv::Mat WithRoomBeside(const cv::Size& size) {
+  const cv::Mat wide = cv::Mat::zeros(size.height, size.width + kWide - 1, CV_32FC1);
+  return wide.colRange(0, size.width);
+}
 
 }  // namespace
 
@@ -81,6 +132,8 @@ GradientPicture MakeGradient(const cv::Mat& picture, double px_per_mm, const cv:
   const cv::Matx13f difference(-0.5F, 0, 0.5F);
   const cv::Mat along = cv::Mat(difference) * px_per_mm;
   const cv::Mat one = cv::Mat::ones(1, 1, CV_32FC1);
+  result.by_x = WithRoomBeside(picture.size());
+  result.by_y = WithRoomBeside(picture.size());
   cv::sepFilter2D(blurred, result.by_x, CV_32F, along, one, {-1, -1}, 0, cv::BORDER_REPLICATE);
   cv::sepFilter2D(blurred, result.by_y, CV_32F, one, along, {-1, -1}, 0, cv::BORDER_REPLICATE);
   return result;
@@ -92,7 +145,8 @@ std::vector<ScoredPose> SearchPoses(const GradientPicture& gradient,
   PieceScorer scorer{gradient, grid, wall};
   scorer.reach_px = static_cast<int>(std::lround(grid.reach_mm * gradient.px_per_mm));
   scorer.side = 2 * scorer.reach_px + 1;
-  const size_t shifts = static_cast<size_t>(scorer.side) * scorer.side;
+  scorer.blocks = (scorer.side + kWide - 1) / kWide;
+  const size_t shifts = static_cast<size_t>(scorer.side) * scorer.blocks * kWide;
   scorer.edge.resize(shifts);
   scorer.foot.resize(shifts);
   double whole_mm = 0;
@@ -105,13 +159,9 @@ std::vector<ScoredPose> SearchPoses(const GradientPicture& gradient,
     const double turn_deg = grid.middle.turn_deg + t * grid.turn_step_deg;
     std::fill(scores.begin(), scores.end(), 0.F);
     for (const EdgePiece& piece : pieces) {
-      scorer.Add(piece, turn_deg, static_cast<float>(piece.length_mm / whole_mm), scores);
+      scorer.Add(piece, Turn(turn_deg), static_cast<float>(piece.length_mm / whole_mm), scores);
     }
-    const auto top = std::max_element(scores.begin(), scores.end()) - scores.begin();
-    const cv::Point2d shift_px(static_cast<double>(top % scorer.side - scorer.reach_px),
-                               static_cast<double>(top / scorer.side - scorer.reach_px));
-    best.push_back(
-        {{grid.middle.center_mm + shift_px / gradient.px_per_mm, turn_deg}, scores[top]});
+    best.push_back(scorer.Best(scores, turn_deg));
   }
   std::sort(best.begin(), best.end(),
             [](const ScoredPose& a, const ScoredPose& b) { return a.score > b.score; });

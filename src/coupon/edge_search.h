@@ -15,7 +15,7 @@ struct Pose {
 
 // Height lines of brightness: the gradient of a picture, per mm.
 struct GradientPicture {
-  cv::Mat by_x;  // CV_32FC1
+  cv::Mat by_x;  // CV_32FC1; rows are stored with room beyond their end, for MakeGradient's user
   cv::Mat by_y;
   double px_per_mm = 10;
   cv::Point2d origin_px;

@@ -3,6 +3,7 @@
 #include <fmt/format.h>
 
 #include <algorithm>
+#include <numeric>
 #include <vector>
 
 #include "coupon/rectify.h"
@@ -51,29 +52,22 @@ struct FieldSum {
   double clipped_pct = 0;
 };
 
-FieldSum SumField(const cv::Mat& picture, const cv::Mat& regions, float clip) {
-  double sum = 0;
-  long count = 0;
-  long clipped = 0;
+FieldSum SumField(const cv::Mat& picture, const CouponRegions& regions, float clip) {
+  // By column: sums that the compiler can make several of at once.
+  std::vector<float> sums(picture.cols, 0.F);
+  std::vector<int> clipped(picture.cols, 0);
   for (int y = 0; y < picture.rows; ++y) {
     const auto* value = picture.ptr<float>(y);
-    const auto* region = regions.ptr<std::uint8_t>(y);
-    float row_sum = 0;
-    int row_count = 0;
-    int row_clipped = 0;
+    const auto* region = regions.regions.ptr<std::uint8_t>(y);
     for (int x = 0; x < picture.cols; ++x) {
       const bool in_field = region[x] == static_cast<std::uint8_t>(Region::kField);
-      row_sum += in_field ? value[x] : 0;
-      row_count += in_field ? 1 : 0;
-      row_clipped += in_field && value[x] >= clip ? 1 : 0;
+      sums[x] += in_field ? value[x] : 0.F;
+      clipped[x] += in_field && value[x] >= clip ? 1 : 0;
     }
-    sum += row_sum;
-    count += row_count;
-    clipped += row_clipped;
   }
-  if (count == 0) return {};
-  return {sum / static_cast<double>(count),
-          100.0 * static_cast<double>(clipped) / static_cast<double>(count)};
+  const auto count = static_cast<double>(regions.field_pixels);
+  return {std::accumulate(sums.begin(), sums.end(), 0.0) / count,
+          100.0 * std::accumulate(clipped.begin(), clipped.end(), 0) / count};
 }
 
 }  // namespace
@@ -109,7 +103,7 @@ Expected<Patch> MakePatch(const Photo& photo, const View& view, const Light& lig
   patch.px_per_mm = regions.px_per_mm;
   patch.origin_px = regions.origin_px;
   constexpr float kClip = 0.985F;
-  const FieldSum linear = SumField(patch.relative, patch.regions, kClip);
+  const FieldSum linear = SumField(patch.relative, regions, kClip);
   if (linear.clipped_pct > options.most_clipped_pct) {
     return Unmeasurable(
         fmt::format("{:.1f} % of the coupon is over-exposed; take the photo with less exposure",
@@ -121,7 +115,7 @@ Expected<Patch> MakePatch(const Photo& photo, const View& view, const Light& lig
                     100 * linear.mean));
   }
   Level(light, frame, patch.relative);
-  patch.level = SumField(patch.relative, patch.regions, INFINITY).mean;
+  patch.level = SumField(patch.relative, regions, INFINITY).mean;
   patch.relative *= 1 / patch.level;
   return patch;
 }

@@ -88,11 +88,10 @@ std::vector<EdgePiece> CutEdges(const CouponDescription& coupon, double piece_mm
   return pieces;
 }
 
-cv::Point2d Turned(const cv::Point2d& point, double turn_deg) {
-  const double turn = turn_deg * CV_PI / 180;
-  return {point.x * std::cos(turn) + point.y * std::sin(turn),
-          -point.x * std::sin(turn) + point.y * std::cos(turn)};
-}
+Turn::Turn(double turn_deg)
+    : cos_(std::cos(turn_deg * CV_PI / 180)), sin_(std::sin(turn_deg * CV_PI / 180)) {}
+
+cv::Point2d Turned(const cv::Point2d& point, double turn_deg) { return Turn(turn_deg)(point); }
 
 bool LooksTheSameTurned(const CouponDescription& coupon, double turn_deg) {
   const auto& outline = coupon.outline_mm;

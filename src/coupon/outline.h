@@ -23,7 +23,20 @@ struct EdgePiece {
 [[nodiscard]] std::vector<EdgePiece> CutEdges(const CouponDescription& coupon, double piece_mm,
                                               double step_mm);
 
-// `point` turned counter-clockwise as seen, in axes whose y points down.
+// A turn counter-clockwise as seen, in axes whose y points down.
+class Turn {
+ public:
+  explicit Turn(double turn_deg);
+  [[nodiscard]] cv::Point2d operator()(const cv::Point2d& point) const {
+    return {point.x * cos_ + point.y * sin_, -point.x * sin_ + point.y * cos_};
+  }
+
+ private:
+  double cos_;
+  double sin_;
+};
+
+// `point` after that turn. For many points, make a Turn.
 [[nodiscard]] cv::Point2d Turned(const cv::Point2d& point, double turn_deg);
 
 // Whether the drawing looks the same after a turn about its origin, within 0.2 mm.

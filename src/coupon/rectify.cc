@@ -5,6 +5,7 @@
 #include <cmath>
 #include <cstdint>
 #include <limits>
+#include <opencv2/core/hal/intrin.hpp>
 #include <opencv2/imgproc.hpp>
 #include <vector>
 
@@ -98,29 +99,35 @@ void SplineCoefficientsAlongColumns(cv::Mat& image) {
   }
 }
 
-cv::Mat SplineCoefficients(const cv::Mat& image) {
+// In place, in both directions, but for the gain 6 of either. In strips that stay in the cache.
+void FindSplineCoefficients(cv::Mat& image) {
+  constexpr int kRows = 16;
+  constexpr int kColumns = 64;
   cv::Mat turned;
-  cv::transpose(image, turned);
-  SplineCoefficientsAlongColumns(turned);
-  cv::Mat coefficients;
-  cv::transpose(turned, coefficients);
-  SplineCoefficientsAlongColumns(coefficients);
-  coefficients *= 36;  // the gain 6 of either direction
-  return coefficients;
+  for (int r = 0; r < image.rows; r += kRows) {
+    cv::Mat strip = image.rowRange(r, std::min(r + kRows, image.rows));
+    cv::transpose(strip, turned);
+    SplineCoefficientsAlongColumns(turned);
+    cv::transpose(turned, strip);
+  }
+  for (int c = 0; c < image.cols; c += kColumns) {
+    cv::Mat strip = image.colRange(c, std::min(c + kColumns, image.cols));
+    SplineCoefficientsAlongColumns(strip);
+  }
 }
 
 using Weights = std::array<float, 4>;
 
-// Weights of the four coefficients round a sample, by its position between the middle two.
+// Weights of the four coefficients round a sample, by its position between the middle two, with
+// the coefficients' gain of 6.
 const std::array<Weights, kPhases + 1>& SplineWeights() {
   static const auto table = [] {
     std::array<Weights, kPhases + 1> weights{};
     for (int i = 0; i <= kPhases; ++i) {
       const double t = static_cast<double>(i) / kPhases;
       const double s = 1 - t;
-      weights[i] = {
-          static_cast<float>(s * s * s / 6), static_cast<float>(2.0 / 3 - t * t * (2 - t) / 2),
-          static_cast<float>(2.0 / 3 - s * s * (2 - s) / 2), static_cast<float>(t * t * t / 6)};
+      weights[i] = {static_cast<float>(s * s * s), static_cast<float>(4 - 3 * t * t * (2 - t)),
+                    static_cast<float>(4 - 3 * s * s * (2 - s)), static_cast<float>(t * t * t)};
     }
     return weights;
   }();
@@ -146,16 +153,16 @@ void MapRow(const NodeMap& map, int y, int width, const cv::Point2f& corner, std
   }
 }
 
-template <class Sample>
+// The frame, row by row: sampler.Row(xs, ys, out) samples at the source pixels (xs, ys).
+template <class Sampler>
 cv::Mat SampleFrame(const NodeMap& map, const cv::Size& size, const cv::Point2f& corner,
-                    Sample&& sample) {
+                    Sampler sampler) {
   cv::Mat result(size, CV_32FC1);
   std::vector<float> xs(size.width);
   std::vector<float> ys(size.width);
   for (int y = 0; y < size.height; ++y) {
     MapRow(map, y, size.width, corner, xs, ys);
-    auto* out = result.ptr<float>(y);
-    for (int x = 0; x < size.width; ++x) out[x] = sample(xs[x], ys[x]);
+    sampler.Row(xs, ys, result.ptr<float>(y));
   }
   return result;
 }
@@ -182,31 +189,120 @@ void LimitToFrame(double photo_px_per_frame_px, cv::Mat& linear) {
   if (sd_px > 0) cv::GaussianBlur(linear, linear, {}, sd_px, sd_px, cv::BORDER_REPLICATE);
 }
 
+// Samples a photo's encoded values by bilinear interpolation. Loops of their own for what vectors
+// can do (positions, weights) and for what they cannot (fetching).
 template <class Pixel>
-cv::Mat SampleEncoded(const Photo& photo, const View& view, const PlaneFrame& frame) {
-  const NodeMap map = MapNodes(view, frame);
-  constexpr float kUnit = 1.F / static_cast<float>(std::numeric_limits<Pixel>::max());
-  const int last_x = photo.encoded.cols - 1;
-  const int last_y = photo.encoded.rows - 1;
-  const auto* data = photo.encoded.ptr<Pixel>(0);
-  const size_t stride = photo.encoded.step1();
-  return SampleFrame(map, frame.size_px, {0, 0}, [&](float x, float y) {
-    x = std::clamp(x, 0.F, static_cast<float>(last_x));
-    y = std::clamp(y, 0.F, static_cast<float>(last_y));
-    const int column = std::min(static_cast<int>(x), std::max(0, last_x - 1));
-    const int row = std::min(static_cast<int>(y), std::max(0, last_y - 1));
-    const float right = x - static_cast<float>(column);
-    const float down = y - static_cast<float>(row);
-    const Pixel* p = data + row * stride + column;
-    const Pixel* q = last_y > 0 ? p + stride : p;
-    const int beside = last_x > 0 ? 1 : 0;
-    const float upper =
-        static_cast<float>(p[0]) * (1 - right) + static_cast<float>(p[beside]) * right;
-    const float lower =
-        static_cast<float>(q[0]) * (1 - right) + static_cast<float>(q[beside]) * right;
-    return kUnit * (upper + down * (lower - upper));
-  });
-}
+class EncodedSampler {
+ public:
+  explicit EncodedSampler(const cv::Mat& encoded)
+      : encoded_(encoded), beside_(encoded.cols > 1 ? 1 : 0), below_(encoded.rows > 1 ? 1 : 0) {}
+
+  void Row(const std::vector<float>& xs, const std::vector<float>& ys, float* out) {
+    const size_t count = xs.size();
+    for (auto* scratch : {&columns_, &rows_}) scratch->resize(count);
+    for (auto* scratch : {&right_, &down_}) scratch->resize(count);
+    for (auto& corner : corners_) corner.resize(count);
+    Split(xs, encoded_.cols - 1, columns_.data(), right_.data());
+    Split(ys, encoded_.rows - 1, rows_.data(), down_.data());
+    for (size_t i = 0; i < count; ++i) {
+      const auto* p = encoded_.ptr<Pixel>(rows_[i]) + columns_[i];
+      const auto* q = encoded_.ptr<Pixel>(rows_[i] + below_) + columns_[i];
+      corners_[0][i] = p[0];
+      corners_[1][i] = p[beside_];
+      corners_[2][i] = q[0];
+      corners_[3][i] = q[beside_];
+    }
+    Mix(out);
+  }
+
+ private:
+  // Whole pixels, such that there is a next one, and the rest.
+  static void Split(const std::vector<float>& at, int last, int* whole, float* rest) {
+    const auto largest = static_cast<float>(last);
+    const int largest_whole = std::max(0, last - 1);
+    for (size_t i = 0; i < at.size(); ++i) {
+      const float inside = std::min(std::max(at[i], 0.F), largest);
+      whole[i] = std::min(static_cast<int>(inside), largest_whole);
+      rest[i] = inside - static_cast<float>(whole[i]);
+    }
+  }
+
+  void Mix(float* out) const {
+    constexpr float kUnit = 1.F / static_cast<float>(std::numeric_limits<Pixel>::max());
+    const int* a = corners_[0].data();
+    const int* b = corners_[1].data();
+    const int* c = corners_[2].data();
+    const int* d = corners_[3].data();
+    for (size_t i = 0; i < right_.size(); ++i) {
+      const float right = right_[i];
+      const float upper = static_cast<float>(a[i]) * (1 - right) + static_cast<float>(b[i]) * right;
+      const float lower = static_cast<float>(c[i]) * (1 - right) + static_cast<float>(d[i]) * right;
+      out[i] = kUnit * (upper + down_[i] * (lower - upper));
+    }
+  }
+
+  const cv::Mat& encoded_;
+  int beside_;
+  int below_;
+  std::vector<int> columns_;
+  std::vector<int> rows_;
+  std::vector<float> right_;
+  std::vector<float> down_;
+  std::array<std::vector<int>, 4> corners_;  // upper left, right, lower left, right
+};
+
+// Samples the spline of a picture: pixel (0, 0) of the picture is (pad, pad) of `coefficients`.
+class SplineSampler {
+ public:
+  SplineSampler(const cv::Mat& coefficients, const cv::Size& size, int pad)
+      : stride_(static_cast<int>(coefficients.step1())),
+        data_(coefficients.ptr<float>(0) + (pad - 1) * stride_ + (pad - 1)),
+        largest_x_(std::max(0.F, static_cast<float>(size.width) - 1.001F)),
+        largest_y_(std::max(0.F, static_cast<float>(size.height) - 1.001F)) {}
+
+  void Row(const std::vector<float>& xs, const std::vector<float>& ys, float* out) {
+    const size_t count = xs.size();
+    offsets_.resize(count);
+    across_.resize(count);
+    down_.resize(count);
+    for (size_t i = 0; i < count; ++i) {
+      const float x = std::min(std::max(xs[i], 0.F), largest_x_);
+      const float y = std::min(std::max(ys[i], 0.F), largest_y_);
+      const int column = static_cast<int>(x);
+      const int row = static_cast<int>(y);
+      offsets_[i] = row * stride_ + column;
+      across_[i] = static_cast<int>((x - static_cast<float>(column)) * kPhases + 0.5F);
+      down_[i] = static_cast<int>((y - static_cast<float>(row)) * kPhases + 0.5F);
+    }
+    size_t i = 0;
+    for (; i + 4 <= count; i += 4) {
+      cv::v_store(out + i, cv::v_reduce_sum4(Products(i), Products(i + 1), Products(i + 2),
+                                             Products(i + 3)));
+    }
+    for (; i < count; ++i) out[i] = cv::v_reduce_sum(Products(i));
+  }
+
+ private:
+  // Of one sample: the four columns' sums, weighted.
+  [[nodiscard]] cv::v_float32x4 Products(size_t i) const {
+    const float* p = data_ + offsets_[i];
+    const Weights& down = weights_[down_[i]];
+    cv::v_float32x4 sum = cv::v_load(p) * cv::v_setall_f32(down[0]);
+    sum += cv::v_load(p + stride_) * cv::v_setall_f32(down[1]);
+    sum += cv::v_load(p + 2 * stride_) * cv::v_setall_f32(down[2]);
+    sum += cv::v_load(p + 3 * stride_) * cv::v_setall_f32(down[3]);
+    return sum * cv::v_load(weights_[across_[i]].data());
+  }
+
+  int stride_;
+  const float* data_;  // one before and above the picture's corner
+  float largest_x_;
+  float largest_y_;
+  const std::array<Weights, kPhases + 1>& weights_ = SplineWeights();
+  std::vector<int> offsets_;
+  std::vector<int> across_;
+  std::vector<int> down_;
+};
 
 }  // namespace
 
@@ -228,37 +324,20 @@ cv::Mat Rectify(const Photo& photo, const View& view, const PlaneFrame& frame) {
   const cv::Rect region = SourceRegion(map, photo.size(), kBorder_px);
   cv::Mat linear = LinearRegion(photo, region);
   LimitToFrame(PhotoPixelsPerFramePixel(map), linear);
+  FindSplineCoefficients(linear);
   cv::Mat coefficients;
   constexpr int kPad = 2;
-  cv::copyMakeBorder(SplineCoefficients(linear), coefficients, kPad, kPad, kPad, kPad,
-                     cv::BORDER_REFLECT_101);
-  const auto& weights = SplineWeights();
-  const auto largest_x = static_cast<float>(region.width) - 1.001F;
-  const auto largest_y = static_cast<float>(region.height) - 1.001F;
-  const size_t stride = coefficients.step1();
-  const auto* data = coefficients.ptr<float>(0);
-  const cv::Point2f corner(region.tl());
-  return SampleFrame(map, frame.size_px, corner, [&](float x, float y) {
-    x = std::clamp(x, 0.F, std::max(0.F, largest_x));
-    y = std::clamp(y, 0.F, std::max(0.F, largest_y));
-    const int column = static_cast<int>(x);
-    const int row = static_cast<int>(y);
-    const Weights& wx =
-        weights[static_cast<int>((x - static_cast<float>(column)) * kPhases + 0.5F)];
-    const Weights& wy = weights[static_cast<int>((y - static_cast<float>(row)) * kPhases + 0.5F)];
-    const float* p = data + (row + kPad - 1) * stride + (column + kPad - 1);
-    float columns[4];
-    for (int i = 0; i < 4; ++i) {
-      columns[i] = wy[0] * p[i] + wy[1] * p[stride + i] + wy[2] * p[2 * stride + i] +
-                   wy[3] * p[3 * stride + i];
-    }
-    return wx[0] * columns[0] + wx[1] * columns[1] + wx[2] * columns[2] + wx[3] * columns[3];
-  });
+  cv::copyMakeBorder(linear, coefficients, kPad, kPad, kPad, kPad, cv::BORDER_REFLECT_101);
+  return SampleFrame(map, frame.size_px, region.tl(),
+                     SplineSampler(coefficients, region.size(), kPad));
 }
 
 cv::Mat RectifyEncoded(const Photo& photo, const View& view, const PlaneFrame& frame) {
-  return photo.encoded.depth() == CV_8U ? SampleEncoded<std::uint8_t>(photo, view, frame)
-                                        : SampleEncoded<std::uint16_t>(photo, view, frame);
+  const NodeMap map = MapNodes(view, frame);
+  return photo.encoded.depth() == CV_8U
+             ? SampleFrame(map, frame.size_px, {0, 0}, EncodedSampler<std::uint8_t>(photo.encoded))
+             : SampleFrame(map, frame.size_px, {0, 0},
+                           EncodedSampler<std::uint16_t>(photo.encoded));
 }
 
 bool IsInPhoto(const Photo& photo, const View& view, const cv::Point2d& sheet_mm, double height_mm,

@@ -170,7 +170,11 @@ std::vector<std::vector<std::complex<double>>> DemodulateTiles(const FieldSpectr
   std::vector<std::vector<std::complex<double>>> amplitudes;
   for (const SpectrumTile& tile : spectrum.tiles) {
     const Eigen::Map<const RowMajor> values(tile.values.ptr<float>(), side, side);
-    const Eigen::MatrixXd rows = (values * along_x).cast<double>();
+    // Column by column: the packing that pays for large products takes longer than these do.
+    Eigen::MatrixXd rows(side, along_x.cols());
+    for (Eigen::Index c = 0; c < along_x.cols(); ++c) {
+      rows.col(c) = (values * along_x.col(c)).cast<double>();
+    }
     auto& of_tile = amplitudes.emplace_back(harmonics);
     for (int h = 0; h < harmonics; ++h) {
       const std::complex<double> i(0, 1);

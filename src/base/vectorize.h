@@ -1,0 +1,12 @@
+#pragma once
+
+// Before a function: it is compiled twice, for any x86-64 processor and for those with AVX2, and
+// the processor at hand chooses when the program starts. For the few loops that most time goes
+// into. Both give the same results to the last bit: multiplication and addition are not fused.
+// (Sanitizers cannot watch the choosing.)
+#if defined(__x86_64__) && defined(__GNUC__) && !defined(__clang__) && \
+    !defined(__SANITIZE_ADDRESS__) && !defined(__SANITIZE_THREAD__)
+#define LAYGAUGE_WIDE_VECTORS __attribute__((target_clones("avx2", "default")))
+#else
+#define LAYGAUGE_WIDE_VECTORS
+#endif
