@@ -126,7 +126,7 @@ class Folder {
       caption.push_back(fmt::format("score {:.2f} ± {:.2f}   {}", found.score->value,
                                     found.score->sd, why.empty() ? "nothing found" : why));
     }
-    const cv::Mat plain = PictureOfPatch(patch);
+    const cv::Mat plain = PictureToJudge(patch);
     const cv::Mat drawn = PictureOfFindings(patch, coupon, found.marks, caption);
     const fs::path folder = path_ / "pictures";
     return WriteFilesWhole(

@@ -143,6 +143,22 @@ cv::Mat PictureOfPatch(const Patch& patch) {
   return picture;
 }
 
+cv::Mat PictureToJudge(const Patch& patch) {
+  constexpr double kSeenAroundMm = 0.2;
+  constexpr int kAroundGray = 60;
+  std::vector<std::vector<cv::Point>> outlines;  // without the holes
+  const cv::Mat on_coupon = patch.regions != static_cast<int>(Region::kOff);
+  cv::findContours(on_coupon, outlines, cv::RETR_EXTERNAL, cv::CHAIN_APPROX_NONE);
+  cv::Mat seen(patch.regions.size(), CV_8UC1, cv::Scalar(0));
+  cv::drawContours(seen, outlines, -1, cv::Scalar(255), cv::FILLED);
+  const int reach_px = cvRound(kSeenAroundMm * patch.px_per_mm);
+  cv::dilate(seen, seen,
+             cv::getStructuringElement(cv::MORPH_RECT, {2 * reach_px + 1, 2 * reach_px + 1}));
+  cv::Mat picture = PictureOfPatch(patch);
+  picture.setTo(cv::Scalar(kAroundGray), seen == 0);
+  return picture;
+}
+
 cv::Mat PictureOfFindings(const Patch& patch, const CouponDescription& coupon,
                           const std::vector<Mark>& marks, const std::vector<std::string>& caption) {
   const cv::Mat gray = PictureOfPatch(patch);

@@ -2,7 +2,7 @@
 // coupons: [{batch, well, width_mm, png}], items: [[coupon]] or [[left, right]] as shown in turn.
 const page = /*PAGE*/null;
 const pairs = page.mode === "pairs";
-const zooms = [0.4, 0.5, 0.6, 0.75, 0.9, 1, 1.25, 1.5, 2, 3, 4];
+const zooms = [0.3, 0.4, 0.5, 0.6, 0.75, 0.9, 1, 1.25, 1.5, 2, 3, 4];
 const element = (id) => document.getElementById(id);
 
 // What the browser keeps: the grader at work, and each grader's judgements.
@@ -74,14 +74,22 @@ function pictureOf(coupon) {
 const pxPerMm = () => page.css_px_per_mm * zooms[state.zoom];
 const views = () => [...element("frame").children];
 
+// A pair lies side by side, or one above the other where that shows more of them.
+const isStacked = () => pairs && element("frame").clientHeight > element("frame").clientWidth;
+
+function arrange() {
+  element("frame").classList.toggle("stacked", isStacked());
+  element("left").textContent = isStacked() ? "Upper is better" : "Left is better";
+  element("right").textContent = isStacked() ? "Lower is better" : "Right is better";
+}
+
 // The largest zoom at which the largest coupon is seen whole: the same for all that follow.
 function zoomToFit() {
   const frame = element("frame");
   const frameBorders = 8;
   const width = frame.clientWidth, height = frame.clientHeight;
-  const stacked = pairs && height > width;
-  const across = (pairs && !stacked ? (width - 12) / 2 : width) - frameBorders;
-  const down = (stacked ? (height - 12) / 2 : height) - frameBorders;
+  const across = (pairs && !isStacked() ? (width - 12) / 2 : width) - frameBorders;
+  const down = (isStacked() ? (height - 12) / 2 : height) - frameBorders;
   const largest = Math.max(...page.coupons.map((coupon) => coupon.width_mm));
   const fit = Math.min(across, down) / largest / page.css_px_per_mm;
   return Math.max(0, zooms.filter((zoom) => zoom <= fit).length - 1);
@@ -107,10 +115,9 @@ function sizePictures() {
 
 function drawItem() {
   show("judge");
-  const frame = element("frame");
-  frame.classList.toggle("stacked", pairs && frame.clientHeight > frame.clientWidth);
-  const names = pairs ? ["left coupon", "right coupon"] : ["coupon"];
-  frame.replaceChildren(...page.items[state.at].map((coupon, side) => {
+  arrange();
+  const names = pairs ? ["first coupon", "second coupon"] : ["coupon"];
+  element("frame").replaceChildren(...page.items[state.at].map((coupon, side) => {
     const view = document.createElement("div");
     view.className = pairs ? "view choice" : "view";
     view.dataset.coupon = coupon;
@@ -339,8 +346,8 @@ function askName() {
 }
 
 const help = pairs
-    ? "<kbd>←</kbd> left, <kbd>→</kbd> right is better, <kbd>↓</kbd> cannot tell, " +
-      "<kbd>Backspace</kbd> back"
+    ? "<kbd>←</kbd> left (upper), <kbd>→</kbd> right (lower) is better, " +
+      "<kbd>↓</kbd> cannot tell, <kbd>Backspace</kbd> back"
     : "<kbd>1</kbd>…<kbd>9</kbd> <kbd>0</kbd>=10, <kbd>.</kbd> half, <kbd>↑</kbd> <kbd>↓</kbd> " +
       "half a step, <kbd>Enter</kbd> <kbd>→</kbd> next, <kbd>←</kbd> back";
 
@@ -365,6 +372,7 @@ function build() {
   }
   element("grade-part").hidden = pairs;
   element("pair-part").hidden = !pairs;
+  document.body.classList.toggle("pairs", pairs);
   element("begin").addEventListener("submit", (event) => {
     event.preventDefault();
     const name = element("grader").value.trim();
@@ -385,6 +393,7 @@ function build() {
     });
   }
   document.addEventListener("keydown", onKey);
+  window.addEventListener("resize", arrange);
   // The same page in another tab: take over what is judged there.
   window.addEventListener("storage", (event) => {
     if (state === null || event.key !== stateKey(grader)) return;

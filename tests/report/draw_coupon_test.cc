@@ -41,6 +41,26 @@ TEST(PictureOfPatch, ShowsTheCouponsOwnLevelAlikeForEveryFilament) {
   }
 }
 
+TEST(PictureToJudge, HidesWhatIsAroundTheCouponAndNothingElse) {
+  Patch patch = EvenPatch();
+  const cv::Mat whole = PictureOfPatch(patch);
+  const cv::Mat seen = PictureToJudge(patch);
+  const auto gray = [&](cv::Point2d point_mm) {
+    const cv::Point2d at = patch.PixelFromCoupon(point_mm);
+    return static_cast<int>(seen.at<uchar>(cvRound(at.y), cvRound(at.x)));
+  };
+  const int own = whole.at<uchar>(0, 0);
+  const int around = seen.at<uchar>(0, 0);
+  EXPECT_NE(around, own);
+  // SquareCoupon ends at 20 mm; its hole at (9, -9) stays as it is.
+  for (const cv::Point2d on : {cv::Point2d(0, 0), {9, -9}, {19.8, 19.8}, {-20.1, 0}}) {
+    EXPECT_EQ(gray(on), own) << on;
+  }
+  for (const cv::Point2d off : {cv::Point2d(-20.8, 0), {20.8, 20.8}, {0, 21.5}, {-21, -21}}) {
+    EXPECT_EQ(gray(off), around) << off;
+  }
+}
+
 TEST(PictureOfFindings, AddsALineForEachCaptionAndOneForTheLegend) {
   const Patch patch = EvenPatch();
   const CouponDescription coupon = SquareCoupon();

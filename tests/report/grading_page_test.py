@@ -377,6 +377,9 @@ class GradingPageTest(unittest.TestCase):
                 self.assertGreaterEqual(box[0], 0)
                 self.assertLessEqual(box[1], width)
                 self.assertGreater(box[1] - box[0], width / 3)
+                if mode:
+                    self.assertEqual(page.element("left").text,
+                                     "Upper is better" if touch else "Left is better")
                 target = page.element("left") if mode else page.grade_button(3)
                 self.tap(target) if touch else target.click()
                 if not mode:
