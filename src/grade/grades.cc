@@ -360,7 +360,7 @@ Done CheckGradesTeach(const std::vector<Judgement>& judgements,
         judgements.front().grade));
   }
   for (const std::string& grader : GraderNames(judgements)) {
-    if (const Done steady = CheckRepeatsAgree(judgements, grader); !steady) return steady;
+    if (Done steady = CheckRepeatsAgree(judgements, grader); !steady) return steady;
   }
   return CheckNoCircles(preferences);
 }

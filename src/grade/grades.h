@@ -15,6 +15,7 @@ namespace laygauge {
 struct CouponName {
   std::string batch;
   std::string well;
+  // NOLINTNEXTLINE(modernize-use-nullptr): a false alarm of clang-tidy 14
   auto operator<=>(const CouponName&) const = default;
 };
 
