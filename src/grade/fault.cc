@@ -5,6 +5,7 @@
 #include <algorithm>
 #include <optional>
 #include <string_view>
+#include <utility>
 
 #include "base/csv.h"
 #include "grade/indices.h"
@@ -39,7 +40,7 @@ const std::vector<FaultRule>& FaultRules() {
       {kTooMuch, {part("ridge_um"), part("blob_count_per_cm2")}, {"flow", "extrusion", "width"}},
       {"lines apart from walls", {part("wall_gap_mean_mm")}, {"overlap", "flow"}},
       {"nozzle drag", {part("scar_length_mm_per_cm2")}, {"hop", "travel", "wipe"}},
-      {"uneven extrusion", {{"pitch_scatter_pct", 2}}, {"speed", "temp"}},
+      {"uneven extrusion", {part("waviness")}, {"speed", "temp"}},
   };
   return rules;
 }
@@ -104,8 +105,8 @@ Fault ChiefFault(const FeatureTable& features, const RunSettings& settings) {
 }
 
 std::string ExtrusionWarning(const std::string& batch, const std::vector<JudgedRun>& runs) {
-  constexpr double kPlain = 0.5;  // half of what is plainly seen, on a run that should be clean
-  constexpr size_t kFewest = 3;   // fewer runs say little about a batch
+  constexpr double kPlain = 0.75;  // nearly plainly seen, on a run that should be clean
+  constexpr size_t kFewest = 3;    // fewer runs say little about a batch
   std::vector<const JudgedRun*> judged;
   for (const JudgedRun& run : runs) {
     const bool has_lines = ValueOf(run.features, "pitch_mm").has_value();
@@ -121,13 +122,13 @@ std::string ExtrusionWarning(const std::string& batch, const std::vector<JudgedR
               [](const JudgedRun* a, const JudgedRun* b) { return *SpeedOf(*a) < *SpeedOf(*b); });
     gentle.resize((gentle.size() + 2) / 3);
   }
-  const auto all_have = [&](std::string_view fault) {
-    return std::all_of(gentle.begin(), gentle.end(), [&](const JudgedRun* run) {
-      return SeverityNamed(fault, run->features) >= kPlain;
-    });
+  const auto shows = [](std::string_view fault) {
+    return [fault](const JudgedRun* run) { return SeverityNamed(fault, run->features) >= kPlain; };
   };
-  for (const std::string_view fault : {kTooLittle, kTooMuch}) {
-    if (!all_have(fault)) continue;
+  for (const auto& [fault, opposite] :
+       {std::pair{kTooLittle, kTooMuch}, std::pair{kTooMuch, kTooLittle}}) {
+    if (!std::all_of(gentle.begin(), gentle.end(), shows(fault))) continue;
+    if (std::any_of(judged.begin(), judged.end(), shows(opposite))) continue;
     return fmt::format(
         "batch {}: even the gentlest runs show {}: check the extrusion calibration before tuning "
         "anything else",

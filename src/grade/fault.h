@@ -22,7 +22,7 @@ struct Fault {
 
 // The fault of the largest severity, if that is at least `kLeastSeverity`. A failed surface is
 // failed whatever else is on it.
-inline constexpr double kLeastSeverity = 0.25;
+inline constexpr double kLeastSeverity = 0.4;
 [[nodiscard]] Fault ChiefFault(const FeatureTable& features, const RunSettings& settings);
 
 // A run of a batch for the check below.
@@ -33,8 +33,9 @@ struct JudgedRun {
 };
 
 // Common practice: where even the gentlest run (the slowest, where a speed is told; else the best)
-// starves or overfills, the extrusion should be calibrated before any tuning. One sentence that
-// says so, or an empty text. Failed coupons and those without lines (ironed) do not count.
+// starves or overfills, the extrusion should be calibrated before any tuning. Where other runs show
+// the opposite, it is the settings that differ. One sentence, or an empty text. Failed coupons and
+// those without lines (ironed) do not count.
 [[nodiscard]] std::string ExtrusionWarning(const std::string& batch,
                                            const std::vector<JudgedRun>& runs);
 

@@ -7,9 +7,9 @@ namespace laygauge {
 
 std::span<const IndexPart> RoughnessParts() {
   static constexpr std::array<IndexPart, 3> parts{{
-      {"line_contrast", 0.10},
-      {"aperiodic_roughness", 0.05},
-      {"waviness", 0.03},
+      {"line_contrast", 0.15},
+      {"aperiodic_roughness", 0.075},
+      {"waviness", 0.04},
   }};
   return parts;
 }
@@ -17,8 +17,8 @@ std::span<const IndexPart> RoughnessParts() {
 std::span<const IndexPart> DefectParts() {
   static constexpr std::array<IndexPart, 6> parts{{
       {"gap_area_pct", 2},
-      {"ridge_um", 30},
-      {"scar_length_mm_per_cm2", 3},
+      {"ridge_um", 40},
+      {"scar_length_mm_per_cm2", 2},
       {"blob_count_per_cm2", 0.5},
       {"wall_gap_mean_mm", 0.15},
       {"failure_area_pct", 5},

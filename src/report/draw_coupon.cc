@@ -18,6 +18,9 @@ namespace {
 constexpr double kOwnLevelLinear = 0.30;  // where the coupon's own level is shown, 0..1
 constexpr int kLineHeightPx = 22;
 constexpr double kFontPx = 15;
+// A mark must not hide what it marks: a fine line, over a veil as wide as the find.
+constexpr double kFineLinePx = 1.5;
+constexpr double kVeil = 0.2;
 
 struct Ink {
   MarkKind kind;
@@ -60,13 +63,17 @@ void DrawMark(cairo_t* cr, const Patch& patch, const Mark& mark, const Ink& ink)
   if (mark.path_mm.empty()) return;
   cairo_new_path(cr);
   TracePath(cr, patch, mark);
+  cairo_set_line_cap(cr, CAIRO_LINE_CAP_ROUND);
+  cairo_set_line_join(cr, CAIRO_LINE_JOIN_ROUND);
+  cairo_set_source_rgba(cr, ink.red, ink.green, ink.blue, kVeil);
   if (mark.closed) {
-    cairo_set_source_rgba(cr, ink.red, ink.green, ink.blue, 0.15);
     cairo_fill_preserve(cr);
+  } else if (const double width_px = mark.width_mm * patch.px_per_mm; width_px > 2 * kFineLinePx) {
+    cairo_set_line_width(cr, width_px);
+    cairo_stroke_preserve(cr);
   }
   cairo_set_source_rgba(cr, ink.red, ink.green, ink.blue, 0.85);
-  cairo_set_line_width(cr, std::max(1.5, mark.closed ? 0.0 : mark.width_mm * patch.px_per_mm));
-  cairo_set_line_cap(cr, CAIRO_LINE_CAP_ROUND);
+  cairo_set_line_width(cr, kFineLinePx);
   cairo_stroke(cr);
 }
 

@@ -16,10 +16,10 @@ FeatureTable Clean() {
 TEST(Indices, AddTheirPartsAndLeaveOutWhatIsMissing) {
   FeatureTable features = Clean();
   features["gap_area_pct"] = {2.0, 0.4};  // once the plain level of 2 %
-  features["ridge_um"] = {15.0, 9.0};     // half the plain level of 30 um
+  features["ridge_um"] = {20.0, 12.0};    // half the plain level of 40 um
   const FeatureValue index = IndexOf(DefectParts(), features);
   EXPECT_DOUBLE_EQ(index.value.value(), 1.5);
-  // 0.4 / 2 and 9 / 30 in quadrature, with failure's 0.1 / 5.
+  // 0.4 / 2 and 12 / 40 in quadrature, with failure's 0.1 / 5.
   EXPECT_NEAR(index.sd.value(), std::sqrt(0.04 + 0.09 + 0.0004), 1e-12);
   features["gap_area_pct"] = {std::nullopt, std::nullopt};
   EXPECT_DOUBLE_EQ(IndexOf(DefectParts(), features).value.value(), 0.5);
@@ -39,6 +39,16 @@ TEST(Fault, NamesWhatIsPlainAndTheSettingThatBelongsToIt) {
   EXPECT_EQ(ChiefFault(starved, {}).name, "failed");
 }
 
+TEST(Fault, FaintTracesAndScatterAreNotNamed) {
+  FeatureTable faint = Clean();
+  faint["gap_area_pct"].value = 0.4;       // 0.2 plain levels
+  faint["wall_gap_mean_mm"].value = 0.05;  // 0.33
+  faint["pitch_scatter_pct"] = {8, 1};     // as where ridges hide the lines
+  EXPECT_EQ(ChiefFault(faint, {}).name, "");
+  faint["waviness"] = {0.05, 0.001};
+  EXPECT_EQ(ChiefFault(faint, {}).name, "uneven extrusion");
+}
+
 TEST(Fault, EvenTheGentlestRunsStarve) {
   std::vector<JudgedRun> runs;
   for (int i = 0; i < 6; ++i) {
@@ -49,6 +59,9 @@ TEST(Fault, EvenTheGentlestRunsStarve) {
   EXPECT_EQ(ExtrusionWarning("b1", runs),
             "batch b1: even the gentlest runs show too little material: check the extrusion "
             "calibration before tuning anything else");
+  runs[5].features["ridge_um"].value = 50;  // another run overfills: not the calibration
+  EXPECT_EQ(ExtrusionWarning("b1", runs), "");
+  runs[5].features["ridge_um"].value = 2;
   runs[0].features["gap_area_pct"].value = 0.2;  // the slowest run is clean: speed is the cause
   EXPECT_EQ(ExtrusionWarning("b1", runs), "");
   runs.resize(2);
