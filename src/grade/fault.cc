@@ -95,10 +95,12 @@ Fault ChiefFault(const FeatureTable& features, const RunSettings& settings) {
   double severity = kLeastSeverity;
   for (const FaultRule& rule : FaultRules()) {
     const double here = SeverityOf(rule, features);
+    if (rule.name == kFailed && here >= kFailedFrom) {
+      return {std::string(kFailed), EvidenceOf(rule, features, settings), here};
+    }
     if (here < severity) continue;
     chief = &rule;
     severity = here;
-    if (rule.name == kFailed) break;
   }
   if (chief == nullptr) return {};
   return {std::string(chief->name), EvidenceOf(*chief, features, settings), severity};
@@ -110,7 +112,7 @@ std::string ExtrusionWarning(const std::string& batch, const std::vector<JudgedR
   std::vector<const JudgedRun*> judged;
   for (const JudgedRun& run : runs) {
     const bool has_lines = ValueOf(run.features, "pitch_mm").has_value();
-    if (has_lines && SeverityNamed(kFailed, run.features) < kLeastSeverity) judged.push_back(&run);
+    if (has_lines && SeverityNamed(kFailed, run.features) < kFailedFrom) judged.push_back(&run);
   }
   if (judged.size() < kFewest) return "";
 

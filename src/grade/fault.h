@@ -20,9 +20,10 @@ struct Fault {
   double severity = 0;   // 1: plainly seen (IndexPart::plain_level)
 };
 
-// The fault of the largest severity, if that is at least `kLeastSeverity`. A failed surface is
-// failed whatever else is on it.
+// The fault of the largest severity, if that is at least `kLeastSeverity`. A surface of which 1 %
+// failed (`kFailedFrom` plain levels) is failed whatever else is on it: a whole one has exactly 0.
 inline constexpr double kLeastSeverity = 0.4;
+inline constexpr double kFailedFrom = 0.2;
 [[nodiscard]] Fault ChiefFault(const FeatureTable& features, const RunSettings& settings);
 
 // A run of a batch for the check below.

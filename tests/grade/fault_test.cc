@@ -35,7 +35,7 @@ TEST(Fault, NamesWhatIsPlainAndTheSettingThatBelongsToIt) {
   EXPECT_EQ(fault.evidence, "gap_area_pct 4, flow_pct 88");
   starved["ridge_um"].value = 90;
   EXPECT_EQ(ChiefFault(starved, {}).name, "too much material");
-  starved["failure_area_pct"].value = 8;
+  starved["failure_area_pct"].value = 1.1;  // from 1 % of the field on
   EXPECT_EQ(ChiefFault(starved, {}).name, "failed");
 }
 

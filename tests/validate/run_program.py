@@ -22,14 +22,14 @@ def number(text):
     return float(text) if text else None
 
 
-def score(photos, folder=None):
+def score(photos, folder=None, pictures="none"):
     """Rows of the table by (file stem, well): every photo is a batch of its own, so none is
     averaged with another. `folder` keeps the results."""
     with tempfile.TemporaryDirectory() as scratch:
         out = Path(folder or scratch) / "results"
         photo_list = Path(scratch) / "photos.csv"
         photo_list.write_text("photo,batch\n" + "".join(f"{p.name},{p.stem}\n" for p in photos))
-        subprocess.run([PROGRAM, "score", *photos, "--photos", photo_list, "--pictures", "none",
+        subprocess.run([PROGRAM, "score", *photos, "--photos", photo_list, "--pictures", pictures,
                         "--out", out], check=True, capture_output=True)
         with open(out / "scores.csv", newline="") as table:
             return {(row["batch"], row["well"]): row for row in csv.DictReader(table)}
