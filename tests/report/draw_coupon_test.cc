@@ -90,11 +90,20 @@ TEST(PictureOfFindings, DrawsEachMarkWhereItIsInItsColour) {
     // A bar 1 mm wide, 4 mm right of the origin and 3 mm below it, 5 mm long.
     const Mark mark{kind, {{4, 3}, {9, 3}}, false, 1.0};
     const cv::Mat picture = PictureOfFindings(patch, coupon, {mark}, {});
-    for (const cv::Point2d on : {cv::Point2d(4, 3), {6.5, 2.7}, {6.5, 3.3}, {9, 3}}) {
-      EXPECT_GT(cv::norm(ColourAt(picture, patch, on) - cv::Vec3d::all(kOwnLevelGray)), 40);
+    const auto off_gray = [&](cv::Point2d at) {
+      return cv::norm(ColourAt(picture, patch, at) - cv::Vec3d::all(kOwnLevelGray));
+    };
+    // A fine line along it; beside it, as far as the bar reaches, a veil of a fifth of the ink:
+    // seen (8 steps), but the surface shows through it (less than half of the line).
+    for (const cv::Point2d on : {cv::Point2d(4.1, 3), {6.5, 3}, {8.9, 3}}) {
+      EXPECT_GT(off_gray(on), 40) << on;
+    }
+    for (const cv::Point2d beside : {cv::Point2d(6.5, 2.7), {6.5, 3.3}}) {
+      EXPECT_GT(off_gray(beside), 8) << beside;
+      EXPECT_LT(off_gray(beside), off_gray({6.5, 3}) / 2) << beside;
     }
     for (const cv::Point2d off : {cv::Point2d(6.5, 2.2), {6.5, 3.8}, {3, 3}, {10, 3}, {6.5, -3}}) {
-      EXPECT_LE(cv::norm(ColourAt(picture, patch, off) - cv::Vec3d::all(kOwnLevelGray)), 2);
+      EXPECT_LE(off_gray(off), 2) << off;
     }
     colours.push_back(ColourAt(picture, patch, {6.5, 3}));
   }
