@@ -3,6 +3,9 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
+#include <utility>
+
+#include "texture/line_undulation.h"
 
 namespace laygauge {
 namespace {
@@ -18,6 +21,9 @@ constexpr double kProbeLowUm = -8;
 constexpr double kProbeHighUm = 42;
 // As dark as this, the probe is dark because line tops mirror a lamp, and its tilt only says where.
 constexpr double kMirrorUm = 40;
+
+// A valley between two ridges is darker by up to twice what ridges make the valleys vary.
+constexpr double kRidgeShadow = 2;
 
 // Light that a channel takes for each width of it: its floor is not wholly dark.
 constexpr double kOpenDarkness = 0.9;
@@ -81,11 +87,22 @@ double LengthMm(const Channel& channel, const LineValleys& valleys) {
   return static_cast<double>(channel.points.size()) * valleys.step_mm;
 }
 
+// What ridges add to the darkness of closed valleys.
+double RidgeShadowUm(const Surface& surface) {
+  if (!surface.lines) {
+    return 0;
+  }
+  const LineUndulation undulation =
+      MeasureLineUndulation(FindLinePieces(surface.valleys, surface.aligned.px_per_mm));
+  return kRidgeShadow * RidgeBelief(undulation) * undulation.valley_um;
+}
+
 std::vector<Channel> FindChannels(const Surface& surface) {
   const double lay_deg =
       surface.lines ? surface.lines->lay_deg : surface.coupon->lay_deg.value_or(0);
-  const double closed_um = ClosedValleyDarknessUm(
-      MeasureGrooveShading(*surface.patch, *surface.coupon, lay_deg), surface.patch->level);
+  const GrooveShading shading = MeasureGrooveShading(*surface.patch, *surface.coupon, lay_deg);
+  const double closed_um =
+      ClosedValleyDarknessUm(shading, surface.patch->level) + RidgeShadowUm(surface);
   std::vector<Channel> channels =
       LinkOpenValleys(surface.valleys, closed_um, kLinkMm * surface.aligned.px_per_mm);
   std::erase_if(channels, [&](const Channel& channel) {
@@ -173,6 +190,48 @@ Mark GapMark(const Channel& channel, const Surface& surface) {
   return mark;
 }
 
+// The value that a share of the whole weight exceeds; 0 where there is none.
+struct Weighted {
+  double value = 0;
+  double weight = 0;
+};
+double ExceededBy(double share, std::vector<Weighted> values) {
+  std::sort(values.begin(), values.end(),
+            [](const Weighted& a, const Weighted& b) { return a.value > b.value; });
+  double left = 0;
+  for (const Weighted& item : values) {
+    left += share * item.weight;
+  }
+  for (const Weighted& item : values) {
+    left -= item.weight;
+    if (left <= 0) {
+      return item.value;
+    }
+  }
+  return 0;
+}
+
+// Width that a twentieth of the channels' length exceeds.
+double WideMm(const std::vector<Channel>& channels) {
+  std::vector<Weighted> widths;
+  for (const Channel& channel : channels) {
+    for (const ChannelPoint& point : channel.points) {
+      widths.push_back({point.width_um / 1000, 1});
+    }
+  }
+  return ExceededBy(0.05, std::move(widths));
+}
+
+// Half of the channels' length is in channels at least this long.
+double LongMm(const std::vector<Channel>& channels, const LineValleys& valleys) {
+  std::vector<Weighted> lengths;
+  for (const Channel& channel : channels) {
+    const double length_mm = LengthMm(channel, valleys);
+    lengths.push_back({length_mm, length_mm});
+  }
+  return ExceededBy(0.5, std::move(lengths));
+}
+
 Finding MeasureGaps(const Surface& surface) {
   const std::vector<Channel> channels = FindChannels(surface);
   const Tiles tiles = MeasureTiles(channels, surface.valleys, surface.aligned.px_per_mm);
@@ -189,24 +248,20 @@ Finding MeasureGaps(const Surface& surface) {
     return finding;
   }
   double length_mm = 0;
-  double longest_mm = 0;
-  double widest_mm = 0;
   for (const Channel& channel : channels) {
-    const double channel_mm = LengthMm(channel, surface.valleys);
-    length_mm += channel_mm;
-    longest_mm = std::max(longest_mm, channel_mm);
-    widest_mm = std::max(widest_mm, channel.widest_um / 1000);
+    length_mm += LengthMm(channel, surface.valleys);
     finding.marks.push_back(GapMark(channel, surface));
   }
   const double cm2 = area_mm2 / 100;
   const auto count = static_cast<double>(channels.size());
   // Counts scatter as their root (Poisson); lengths as the counts do.
+  const double long_mm = LongMm(channels, surface.valleys);
   const double count_sd = std::sqrt(std::max(1.0, count));
   finding.features = {ShareOfTiles(tiles),
                       {count / cm2, count_sd / cm2, ""},
                       {length_mm / cm2, std::max(length_mm / count_sd, kMinLengthMm) / cm2, ""},
-                      {widest_mm, kMinOpenUm / 1000, ""},
-                      {longest_mm, surface.valleys.step_mm, ""}};
+                      {WideMm(channels), kMinOpenUm / 1000, ""},
+                      {long_mm, std::max(long_mm / count_sd, surface.valleys.step_mm), ""}};
   return finding;
 }
 
@@ -226,12 +281,12 @@ Feature MeasureGapArea(const Surface& surface) {
 
 Metric GapsMetric() {
   return {"gaps",
-          1,
+          2,
           {{"gap_area_pct", "share of the field that open channels between lines take"},
            {"gaps_per_cm2", "open channels of 0.75 mm and more"},
            {"gap_length_mm_per_cm2", "their length together"},
-           {"gap_widest_mm", "width of the widest, as a wholly dark channel"},
-           {"gap_longest_mm", "length of the longest"}},
+           {"gap_wide_mm", "width that a twentieth of that length exceeds"},
+           {"gap_long_mm", "half of that length is in channels at least this long"}},
           &MeasureGaps};
 }
 

@@ -1,5 +1,7 @@
 #include "texture/wall_gaps.h"
 
+#include <fmt/core.h>
+
 #include <algorithm>
 #include <cmath>
 #include <limits>
@@ -252,6 +254,14 @@ Total Sum(const std::vector<Seam>& seams) {
 }
 
 Finding MeasureWallGaps(const Surface& surface) {
+  if (surface.torn.Failed()) {
+    const Feature none{
+        std::nullopt, std::nullopt,
+        fmt::format("{:.0f} % of the field is torn or lifted, and edges there look like an open "
+                    "seam",
+                    surface.torn.area_pct)};
+    return {{none, none, none}, {}};
+  }
   const Patch& patch = *surface.patch;
   const double wall_mm = surface.coupon->wall_mm;
   Finding finding;
@@ -289,7 +299,7 @@ Finding MeasureWallGaps(const Surface& surface) {
 
 Metric WallGapsMetric() {
   return {"wall_gaps",
-          1,
+          2,
           {{"wall_gap_pct", "share of the seam between field and walls that is open"},
            {"wall_gap_mm", "mean width of the open parts, 0 where none is"},
            {"wall_gap_mean_mm", "width averaged over the whole seam"}},

@@ -19,13 +19,20 @@ Finding Measure(const Patch& patch) {
   return RidgesMetric().measure(MakeSurface(patch, coupon));
 }
 
-// Random by line, smooth along it (a wave of 3 to 5 mm), standard deviation 1.
+struct Lengths {
+  double min_mm = 0;
+  double max_mm = 0;
+};
+constexpr Lengths kLumps{2, 3};
+constexpr Lengths kWander{12, 16};
+
+// Random by line, a wave along it, standard deviation 1.
 class LineWaves {
  public:
-  explicit LineWaves(unsigned seed) {
+  LineWaves(unsigned seed, Lengths lengths) {
     std::mt19937 random(seed);
     std::uniform_real_distribution<double> phase(0, 2 * std::numbers::pi);
-    std::uniform_real_distribution<double> length_mm(3, 5);
+    std::uniform_real_distribution<double> length_mm(lengths.min_mm, lengths.max_mm);
     for (Wave& wave : waves_) {
       wave = {phase(random), 2 * std::numbers::pi / length_mm(random)};
     }
@@ -43,40 +50,74 @@ class LineWaves {
   std::array<Wave, 200> waves_;
 };
 
-// Ridges fill some valleys, deepen others and make line tops uneven.
-Patch Ridged(double darkness_sd_mm, double top_sd) {
-  const LineWaves valleys(1);
-  const LineWaves tops(2);
+Patch Waved(double darkness_sd_mm, double top_sd, Lengths lengths) {
+  const LineWaves valleys(1, lengths);
+  const LineWaves tops(2, lengths);
   return RenderChannels(
       {.pitch_mm = 0.45,
+       .level = 0.4,
+       .blur_sd_mm = 0.06,
        .noise_sd = 0.01,
-       .darkness_mm =
-           [&](int line, double along) {
-             return std::max(0.0, 0.01 + darkness_sd_mm * valleys(line, along));
-           },
+       .darkness_mm = [&](int line,
+                          double along) { return 0.02 + darkness_sd_mm * valleys(line, along); },
        .top = [&](int line, double along) { return 1 + top_sd * tops(line, along); }});
 }
 
+// Variance within a millimetre of a wave of variance 1, as docs/metrics.md defines it, of means
+// over 0.5 mm: analytic, the mean over the lengths.
+double ShortVariance(Lengths lengths) {
+  double sum = 0;
+  constexpr int kSteps = 100;
+  for (int i = 0; i < kSteps; ++i) {
+    const double length_mm =
+        lengths.min_mm + (i + 0.5) / kSteps * (lengths.max_mm - lengths.min_mm);
+    const double turn = std::numbers::pi * 0.5 / length_mm;  // half of 0.5 mm
+    const double kept = std::sin(turn) / turn;
+    sum += kept * kept * (0.84 * std::cos(2 * turn) - std::cos(4 * turn)) / (0.84 - 0.59);
+  }
+  return sum / kSteps;
+}
+
+// Height of ridges that make the bottoms of valleys vary by `bottom_pct`, in a gray coupon.
+double WantUm(double bottom_pct) {
+  return 9 / (1 - 0.35 * 0.4) * bottom_pct * std::sqrt(ShortVariance(kLumps));
+}
+
+// A box much narrower than a Gaussian blur darkens its middle by width / (sd root 2 pi) (common
+// fact); smoothing by 1 2 1 over samples of 0.05 mm keeps 0.5 + 0.5 exp(-0.05^2 / 2 sd^2).
+double BottomPct(double darkness_sd_mm) {
+  constexpr double kBlurMm = 0.06;
+  return 100 * darkness_sd_mm / (kBlurMm * std::sqrt(2 * std::numbers::pi)) *
+         (0.5 + 0.5 * std::exp(-0.5 * 0.05 * 0.05 / (kBlurMm * kBlurMm)));
+}
+
 TEST(Ridges, GrowWithTheirHeight) {
-  const double low = *Measure(Ridged(0.0025, 0.01)).features[0].value;
-  const double high = *Measure(Ridged(0.005, 0.02)).features[0].value;
-  // The mean of two neighbours' darkness varies by its sd over root 2; 10 um of height for each um
-  // (docs/metrics.md). Of waves 3 to 5 mm long, means over 0.5 mm keep 0.97 and the covariance at
-  // 0.5 mm, mean cos(2 pi 0.5 / length) = 0.70, keeps its root, 0.84.
-  const double want = 10 * 2.5 / std::sqrt(2.0) * 0.97 * 0.84;
-  // A tile of 3 mm takes off its mean (over six lines: 3 % of a wave's sd), and one of 1700 pieces
-  // in a field of 80 independent waves scatters by 1 / sqrt(160), 8 %.
-  EXPECT_NEAR(low, want, 0.12 * want);
-  EXPECT_NEAR(high, 2 * want, 2 * 0.12 * want);
+  // Bottoms are read at the nearest sample, up to half of one from the middle: a mean loss of 6 %.
+  // 75 lines of 12 waves scatter by 1 / root(2 * 900), 2 %; a tile's mean takes less.
+  for (const double sd_mm : {0.0025, 0.005}) {
+    const double want_um = WantUm(BottomPct(sd_mm));
+    EXPECT_NEAR(*Measure(Waved(sd_mm, 0, kLumps)).features[0].value, 0.95 * want_um,
+                0.06 * want_um);
+  }
+}
+
+// What light from one side does alike to bright and to dark places drops out: of tops that vary by
+// t, valleys between two show half of the variance, tops all of it.
+TEST(Ridges, WhatIsAsBrightAsDarkIsNotHeight) {
+  const double bottom_pct = BottomPct(0.005);
+  const double top_pct = 3;
+  const double want_um = WantUm(std::sqrt(bottom_pct * bottom_pct - top_pct * top_pct / 2));
+  EXPECT_NEAR(*Measure(Waved(0.005, top_pct / 100, kLumps)).features[0].value, 0.95 * want_um,
+              0.1 * want_um);  // the loss at the bottoms (above) weighs more in the difference
 }
 
 TEST(Ridges, WanderingLinesAreNone) {
-  // The same valleys, but even tops: lines that lie nearer and further apart.
-  EXPECT_EQ(*Measure(Ridged(0.005, 0)).features[0].value, 0);
+  // The same valleys, but over lengths over which the path wanders.
+  EXPECT_EQ(*Measure(Waved(0.005, 0, kWander)).features[0].value, 0);
 }
 
 TEST(Ridges, EvenLinesAreNone) {
-  const Finding ridges = Measure(Ridged(0, 0));
+  const Finding ridges = Measure(Waved(0, 0, kLumps));
   EXPECT_EQ(*ridges.features[0].value, 0);
   EXPECT_TRUE(ridges.marks.empty());
 }
