@@ -3,7 +3,6 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
-#include <utility>
 
 #include "texture/line_undulation.h"
 
@@ -32,8 +31,9 @@ constexpr double kMinOpenUm = 4;       // of a channel's every part
 constexpr double kMinWidestUm = 10;    // of its widest part: twice what noise of the sample
                                        // plates makes of a closed valley
 constexpr double kMinLengthMm = 0.75;  // a scar or a grain of noise is shorter along the lay
-constexpr double kLinkMm = 0.1;        // across the lay, from station to station
-constexpr int kTiles = 4;              // by 4: for the standard deviation
+constexpr double kLongMm = 5;
+constexpr double kLinkMm = 0.1;  // across the lay, from station to station
+constexpr int kTiles = 4;        // by 4: for the standard deviation
 
 struct ChannelPoint {
   int station = 0;
@@ -190,46 +190,20 @@ Mark GapMark(const Channel& channel, const Surface& surface) {
   return mark;
 }
 
-// The value that a share of the whole weight exceeds; 0 where there is none.
-struct Weighted {
-  double value = 0;
-  double weight = 0;
-};
-double ExceededBy(double share, std::vector<Weighted> values) {
-  std::sort(values.begin(), values.end(),
-            [](const Weighted& a, const Weighted& b) { return a.value > b.value; });
-  double left = 0;
-  for (const Weighted& item : values) {
-    left += share * item.weight;
-  }
-  for (const Weighted& item : values) {
-    left -= item.weight;
-    if (left <= 0) {
-      return item.value;
-    }
-  }
-  return 0;
-}
-
-// Width that a twentieth of the channels' length exceeds.
+// Width that a twentieth of the channels' length exceeds; 0 without channels.
 double WideMm(const std::vector<Channel>& channels) {
-  std::vector<Weighted> widths;
+  std::vector<double> widths_um;
   for (const Channel& channel : channels) {
     for (const ChannelPoint& point : channel.points) {
-      widths.push_back({point.width_um / 1000, 1});
+      widths_um.push_back(point.width_um);
     }
   }
-  return ExceededBy(0.05, std::move(widths));
-}
-
-// Half of the channels' length is in channels at least this long.
-double LongMm(const std::vector<Channel>& channels, const LineValleys& valleys) {
-  std::vector<Weighted> lengths;
-  for (const Channel& channel : channels) {
-    const double length_mm = LengthMm(channel, valleys);
-    lengths.push_back({length_mm, length_mm});
+  if (widths_um.empty()) {
+    return 0;
   }
-  return ExceededBy(0.5, std::move(lengths));
+  const auto place = widths_um.end() - 1 - static_cast<std::ptrdiff_t>(widths_um.size() / 20);
+  std::nth_element(widths_um.begin(), place, widths_um.end());
+  return *place / 1000;
 }
 
 Finding MeasureGaps(const Surface& surface) {
@@ -248,20 +222,22 @@ Finding MeasureGaps(const Surface& surface) {
     return finding;
   }
   double length_mm = 0;
+  double long_mm = 0;
   for (const Channel& channel : channels) {
-    length_mm += LengthMm(channel, surface.valleys);
+    const double channel_mm = LengthMm(channel, surface.valleys);
+    length_mm += channel_mm;
+    long_mm += channel_mm >= kLongMm ? channel_mm : 0;
     finding.marks.push_back(GapMark(channel, surface));
   }
   const double cm2 = area_mm2 / 100;
   const auto count = static_cast<double>(channels.size());
   // Counts scatter as their root (Poisson); lengths as the counts do.
-  const double long_mm = LongMm(channels, surface.valleys);
   const double count_sd = std::sqrt(std::max(1.0, count));
   finding.features = {ShareOfTiles(tiles),
                       {count / cm2, count_sd / cm2, ""},
                       {length_mm / cm2, std::max(length_mm / count_sd, kMinLengthMm) / cm2, ""},
                       {WideMm(channels), kMinOpenUm / 1000, ""},
-                      {long_mm, std::max(long_mm / count_sd, surface.valleys.step_mm), ""}};
+                      {long_mm / cm2, std::max(long_mm / count_sd, kMinLengthMm) / cm2, ""}};
   return finding;
 }
 
@@ -286,7 +262,7 @@ Metric GapsMetric() {
            {"gaps_per_cm2", "open channels of 0.75 mm and more"},
            {"gap_length_mm_per_cm2", "their length together"},
            {"gap_wide_mm", "width that a twentieth of that length exceeds"},
-           {"gap_long_mm", "half of that length is in channels at least this long"}},
+           {"gap_long_mm_per_cm2", "length of those of 5 mm and more"}},
           &MeasureGaps};
 }
 
