@@ -13,10 +13,13 @@ namespace {
 
 constexpr int kCorners = 16;  // of the circle that the overlay draws
 
-// The chance that a blob of this excess is found again in another photograph; peaks of one blob
-// differ by about one unit of excess.
-double ChanceAgain(double excess) {
-  return 0.5 * std::erfc(-(excess - BlobOptions{}.min_excess) / std::numbers::sqrt2);
+constexpr double kDoubtfulExcess = 2;  // below the limit, where a lump still counts by its chance
+
+// The chance that a lump of this excess is found in another photograph: peaks of one lump differ
+// by about one unit of excess. Counting by it, a lump at the limit cannot make the count jump.
+double ChanceFound(double excess) {
+  constexpr double kPeakSd = 1;
+  return 0.5 * std::erfc(-(excess - BlobOptions{}.min_excess) / (kPeakSd * std::numbers::sqrt2));
 }
 
 Finding Unmeasured(const std::string& reason) {
@@ -45,23 +48,27 @@ Finding MeasureBlobs(const Surface& surface) {
   if (view.searched_cm2 <= 0) {
     return Unmeasured("the patch shows no top surface away from walls");
   }
-  const std::vector<Blob> blobs = FindBlobs(view, surface.scars);
+  BlobOptions with_doubtful;
+  with_doubtful.min_excess -= kDoubtfulExcess;
+  const std::vector<Blob> blobs = FindBlobs(view, surface.scars, with_doubtful);
+  double count = 0;
   double area_mm2 = 0;
   double area_variance = 0;
   double count_variance = 0;
   Finding finding;
   for (const Blob& blob : blobs) {
-    const double again = ChanceAgain(blob.excess);
-    area_mm2 += blob.area_mm2;
+    const double found = ChanceFound(blob.excess);
+    count += found;
+    area_mm2 += found * blob.area_mm2;
     // A third of its area: the rim moves by a pixel of the view.
-    area_variance += std::pow(blob.area_mm2, 2) * (1.0 / 9 + again * (1 - again));
-    count_variance += again * (1 - again);
+    area_variance += std::pow(blob.area_mm2, 2) * (found * found / 9 + found * (1 - found));
+    count_variance += found * (1 - found);
+    if (blob.excess < BlobOptions{}.min_excess) continue;
     finding.marks.push_back(Circle(view.CouponPoint(blob.centre_px), blob.area_mm2));
   }
   // mm2 per cm2 is per cent.
   finding.features = {
-      {static_cast<double>(blobs.size()) / view.searched_cm2,
-       std::sqrt(count_variance) / view.searched_cm2, ""},
+      {count / view.searched_cm2, std::sqrt(count_variance) / view.searched_cm2, ""},
       {area_mm2 / view.searched_cm2, std::sqrt(area_variance) / view.searched_cm2, ""}};
   return finding;
 }
@@ -70,7 +77,7 @@ Finding MeasureBlobs(const Surface& surface) {
 
 Metric BlobsMetric() {
   return {"blobs",
-          1,
+          2,
           {{"blob_count_per_cm2", "lumps, by area of top surface"},
            {"blob_area_pct", "share of the top surface that lumps take"}},
           &MeasureBlobs};

@@ -118,7 +118,11 @@ TEST(BlobsMetric, CountsByAreaAndMarks) {
   const Surface surface = MakeSurface(patch, coupon);
   const Finding finding = metric.measure(surface);
   ASSERT_EQ(finding.features.size(), metric.features.size());
-  EXPECT_NEAR(finding.features[0].value.value() * surface.top.searched_cm2, 5, 1e-9);
+  // Five plain ones count whole. An exponential tail of 110 exp(-1.609 e) local maxima above excess
+  // e, each counting by its chance down to two units below the limit, adds 0.7 in the mean.
+  const double count = finding.features[0].value.value() * surface.top.searched_cm2;
+  EXPECT_GT(count, 4.9);
+  EXPECT_LT(count, 7);
   EXPECT_EQ(finding.marks.size(), 5U);
   // Each takes between the disk of its own 0.3 mm and that of the separation, 1.8 mm.
   const double area_mm2 = finding.features[1].value.value() * surface.top.searched_cm2 / 5;
