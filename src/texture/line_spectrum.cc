@@ -38,9 +38,9 @@ struct StrongWave {
 // direction, on which maxima arise that belong to no line: tiles agree on those by chance.
 StrongWave FindStrongWave(const FieldSpectrum& spectrum, double low_per_mm, double high_per_mm,
                           double min_ratio) {
-  constexpr int kPeaks = 6;
+  constexpr int kPeaks = 12;
   constexpr double kApartBins = 2.5;
-  constexpr double kEnoughAgreement = 0.6;
+  constexpr double kEnoughAgreement = 0.8;
   std::vector<cv::Point2d> seen;
   StrongWave best;
   for (int i = 0; i < kPeaks; ++i) {
@@ -50,6 +50,7 @@ StrongWave FindStrongWave(const FieldSpectrum& spectrum, double low_per_mm, doub
         return apart < kApartBins * spectrum.bin_per_mm;
       });
     });
+    seen.push_back(FrequencyOf(spectrum, peak.bin.x, peak.bin.y));
     const double ratio = peak.power > 0 ? PeakRatio(spectrum, peak) : 0;
     if (ratio < min_ratio) {
       best.ratio = i == 0 ? ratio : best.ratio;
@@ -63,7 +64,6 @@ StrongWave FindStrongWave(const FieldSpectrum& spectrum, double low_per_mm, doub
     if (wave.agreement >= kEnoughAgreement) {
       break;
     }
-    seen.push_back(FrequencyOf(spectrum, peak.bin.x, peak.bin.y));
   }
   return best;
 }
@@ -102,10 +102,17 @@ std::optional<cv::Point2d> Fundamental(const FieldSpectrum& spectrum, cv::Point2
       return strong / static_cast<double>(divisor);
     }
   }
-  if (std::hypot(strong.x, strong.y) > 1 / options.min_pitch_mm) {
-    return std::nullopt;
+  if (cv::norm(strong) <= 1 / options.min_pitch_mm) {
+    return strong;
   }
-  return strong;
+  // Too fine for lines: their second harmonic, if anything stands out at its half, however blurred
+  // by wander; else the camera's grid beats with ironed tracks.
+  const cv::Point2d half = strong / 2.0;
+  const cv::Point bin(static_cast<int>(std::lround(std::abs(half.x) / spectrum.bin_per_mm)),
+                      static_cast<int>(std::lround(std::abs(half.y) / spectrum.bin_per_mm)));
+  const bool stands_out =
+      PeakRatio(spectrum, {bin, PowerNear(spectrum, half)}) >= options.min_peak_ratio;
+  return stands_out ? std::optional(half) : std::nullopt;
 }
 
 // Frequency from the fundamental and its harmonics, each weighted by the inverse of its
