@@ -37,7 +37,8 @@ const std::vector<FaultRule>& FaultRules() {
   static const std::vector<FaultRule> rules{
       {kFailed, {part("failure_area_pct")}, {}},
       {kTooLittle, {part("gap_area_pct")}, {"flow", "extrusion", "width"}},
-      {kTooMuch, {part("ridge_um"), part("blob_count_per_cm2")}, {"flow", "extrusion", "width"}},
+      // Blobs come from oozing as well: a plain level of their own, twice the index's.
+      {kTooMuch, {part("ridge_um"), {"blob_count_per_cm2", 1}}, {"flow", "extrusion", "width"}},
       {"lines apart from walls", {part("wall_gap_mean_mm")}, {"overlap", "flow"}},
       {"nozzle drag", {part("scar_length_mm_per_cm2")}, {"hop", "travel", "wipe"}},
       {"uneven extrusion", {part("waviness")}, {"speed", "temp"}},

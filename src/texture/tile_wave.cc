@@ -5,6 +5,8 @@
 #include <cmath>
 #include <numbers>
 
+#include "texture/spectrum_peak.h"
+
 namespace laygauge {
 namespace {
 
@@ -78,6 +80,25 @@ double CoherentPower(const FieldSpectrum& spectrum, cv::Point2d frequency) {
   return std::norm(CoherentSum(spectrum, AmplitudesAt(spectrum, frequency), {}));
 }
 
+namespace {
+
+// Frequency of the strongest wave within two bins of a frequency.
+cv::Point2d PeakNear(const FieldSpectrum& spectrum, cv::Point2d frequency) {
+  constexpr int kReachBins = 2;
+  const int kx = static_cast<int>(std::lround(frequency.x / spectrum.bin_per_mm));
+  const int ky = static_cast<int>(std::lround(frequency.y / spectrum.bin_per_mm));
+  Peak peak{{kx, ky}, -1};
+  for (int y = ky - kReachBins; y <= ky + kReachBins; ++y) {
+    for (int x = kx - kReachBins; x <= kx + kReachBins; ++x) {
+      const double power = PowerAt(spectrum.power, x, y);
+      if (power > peak.power) peak = {{x, y}, power};
+    }
+  }
+  return InterpolatedFrequency(spectrum, spectrum.power, peak);
+}
+
+}  // namespace
+
 AgreedWave FindAgreedWave(const FieldSpectrum& spectrum, cv::Point2d coarse, double high_per_mm) {
   constexpr int kSteps = 6;
   const int harmonics = 2 * cv::norm(coarse) <= high_per_mm ? 2 : 1;
@@ -89,6 +110,7 @@ AgreedWave FindAgreedWave(const FieldSpectrum& spectrum, cv::Point2d coarse, dou
       powers[h] += std::norm(tile[h]) * static_cast<double>(spectrum.tiles.size());
     }
   }
+  const cv::Point2d second = harmonics == 2 ? PeakNear(spectrum, 2 * coarse) : cv::Point2d();
   AgreedWave best;
   double best_sum = -1;
   for (int i = -kSteps; i <= kSteps; ++i) {
@@ -96,7 +118,11 @@ AgreedWave FindAgreedWave(const FieldSpectrum& spectrum, cv::Point2d coarse, dou
       const cv::Point2d shift = spectrum.bin_per_mm / (2 * kSteps) * cv::Point2d(i, j);
       double sum = 0;
       double better = 0;
-      for (int h = 0; h < harmonics; ++h) {
+      // Tiles in steps agree on a sharp wave's aliases, too: the second harmonic counts only where
+      // its own power is.
+      const double off = cv::norm(2 * (coarse + shift) - second);
+      const int counting = harmonics == 2 && off > spectrum.bin_per_mm / 2 ? 1 : harmonics;
+      for (int h = 0; h < counting; ++h) {
         const double agreement =
             std::norm(CoherentSum(spectrum, amplitudes[h], (h + 1.0) * shift)) / powers[h];
         sum += agreement;

@@ -29,7 +29,7 @@ struct Wave {
 // The frequency, within half a bin of a coarse one, at which the tiles agree best on the wave and
 // its second harmonic (if not above `high_per_mm`): a grid of a twelfth of a bin. Each harmonic
 // counts by its agreement, not by its strength, as a strong fundamental may be spread by the lines'
-// wander while a faint harmonic is sharp.
+// wander while a faint harmonic is sharp; it counts only within half a bin of its own peak.
 struct AgreedWave {
   cv::Point2d frequency;
   double agreement = 0;  // of the better harmonic: |sum|^2 / (n sum of squares), 0..1

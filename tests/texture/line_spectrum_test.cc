@@ -49,6 +49,21 @@ TEST(FindLines, ReportsTheFundamentalBehindAStrongerHarmonic) {
   }
 }
 
+// Ridges whose places scatter blur the lines' own wave over the spectrum; a sharp second harmonic,
+// finer than any pitch searched, still tells it. Tolerance: a fifth of the promised 0.4 %.
+TEST(FindLines, FollowsASharpSecondHarmonicWhereTheFundamentalIsBlurred) {
+  for (const std::uint64_t seed : {1, 2, 3, 4}) {
+    Patch patch = RenderLines(
+        {.pitch_mm = 0.365, .lay_deg = 45, .first = 0.03, .wander_mm = 0.1, .seed = seed});
+    const Patch harmonic =
+        RenderLines({.pitch_mm = 0.1825, .lay_deg = 45, .first = 0.01, .noise_sd = 0.005});
+    patch.relative += harmonic.relative - 1;
+    const Expected<Lines> lines = FindIn(patch);
+    ASSERT_TRUE(lines) << seed << ": " << lines.error().message;
+    EXPECT_NEAR(lines->pitch_mm, 0.365, 0.0008 * 0.365) << seed;
+  }
+}
+
 // Neighbouring lines laid to and fro differ slightly: a faint wave at twice the pitch is no line.
 TEST(FindLines, IgnoresTheAlternationOfLines) {
   Patch patch = RenderLines({.pitch_mm = 0.4, .lay_deg = 45, .first = 0.1, .second = 0.03});
