@@ -89,9 +89,8 @@ TEST(SamplePlates, GapAreaIsWithinItsTolerance) {
   EXPECT_GE(within, 0.9 * static_cast<double>(gaps.told.size()));
 }
 
-// Promised: a rank correlation of 0.85 with the truth. Blobs (0.82 over all seven plates, under two
-// strips of light 5 of 9 are seen) and the ranks of gap areas (0.92 for 0.95) fall short
-// (docs/validation.md) and are not asserted.
+// Promised: a rank correlation of 0.85 with the truth. Blobs (0.846) and the ranks of gap areas
+// (0.94 for 0.95) fall short (docs/validation.md) and are not asserted.
 TEST(SamplePlates, DefectsAreInTheirTrueOrder) {
   const auto rank = [](const char* feature, const char* truth) {
     const Compared compared = Compare(feature, truth);
