@@ -165,26 +165,26 @@ LinePieces FindLinePieces(const LineValleys& valleys, double px_per_mm) {
 }
 
 LineUndulation MeasureLineUndulation(const LinePieces& pieces) {
-  const float bottom_limit = ClipLimit(pieces, &LinePiece::bottom_pct);
-  const float top_limit = ClipLimit(pieces, &LinePiece::top_pct);
-  const auto dark = [&](std::size_t from, std::size_t to) -> Kept {
-    const Kept bottom = KeptAlong(pieces, from, to, &LinePiece::bottom_pct, bottom_limit);
-    const Kept top = KeptAlong(pieces, from, to, &LinePiece::top_pct, top_limit);
-    return {bottom.near - top.near, bottom.far - top.far};
-  };
   const std::size_t count = pieces.size();
-  const Kept all = dark(0, count);
   LineUndulation found;
-  found.dark_pct = std::sqrt(std::max(0.0, all.Short()));
   const Kept darkness = KeptAlong(pieces, 0, count, &LinePiece::darkness_um,
                                   ClipLimit(pieces, &LinePiece::darkness_um));
   found.valley_um = std::sqrt(std::max(0.0, darkness.Short()));
   found.valley_share = darkness.near > 0 ? darkness.Short() / darkness.near : 0;
+  const float bottom_limit = ClipLimit(pieces, &LinePiece::bottom_pct);
+  const float top_limit = ClipLimit(pieces, &LinePiece::top_pct);
+  const double share = std::clamp(found.valley_share, 0.0, 1.0);
+  const auto dark_variance = [&](std::size_t from, std::size_t to) {
+    return share * (KeptAlong(pieces, from, to, &LinePiece::bottom_pct, bottom_limit).near -
+                    KeptAlong(pieces, from, to, &LinePiece::top_pct, top_limit).near);
+  };
+  const double variance = dark_variance(0, count);
+  found.dark_pct = std::sqrt(std::max(0.0, variance));
   constexpr std::size_t kParts = 4;
   double squares = 0;
   for (std::size_t part = 0; part < kParts; ++part) {
     const double difference =
-        dark(part * count / kParts, (part + 1) * count / kParts).Short() - all.Short();
+        dark_variance(part * count / kParts, (part + 1) * count / kParts) - variance;
     squares += difference * difference;
   }
   const double variance_sd = std::sqrt(squares / (kParts - 1) / kParts);

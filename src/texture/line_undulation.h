@@ -11,7 +11,8 @@ namespace laygauge {
 struct LineUndulation {
   double valley_um = 0;     // standard deviation of the valleys' darkness
   double valley_share = 0;  // of the whole variance of that darkness that is within a millimetre
-  // Root of the variance of the valleys' brightness less that of the tops', % of the coupon's own.
+  // Root of that share of the variance of the valleys' brightness less that of the tops', % of the
+  // coupon's own.
   double dark_pct = 0;
   double dark_pct_sd = 0;  // of dark_pct, from four parts of the field
 };

@@ -13,7 +13,8 @@ namespace {
 // much of the light in the valleys white plastic makes up (docs/metrics.md, "Ridges").
 constexpr double kHeightUm = 9;
 constexpr double kInterreflection = 0.35;
-constexpr double kFloorUm = 3;  // standard deviation where nothing is seen
+constexpr double kFloorUm = 3;      // standard deviation where nothing is seen
+constexpr double kMarkedSd = 1.25;  // of the darkness that a mark shows
 
 // Where a valley is darkest against its surroundings, 1 mm and longer.
 std::vector<Mark> RidgeMarks(const LinePieces& stations, double limit_um,
@@ -77,7 +78,8 @@ Finding MeasureRidges(const Surface& surface) {
   const double sd_um = std::hypot(belief * um_per_pct * undulation.dark_pct_sd, kFloorUm);
   Finding finding{{{height_um, sd_um, ""}}, {}};
   if (belief > 0.5) {
-    finding.marks = RidgeMarks(pieces, 2 * undulation.valley_um, surface.valleys, surface.aligned);
+    finding.marks =
+        RidgeMarks(pieces, kMarkedSd * undulation.valley_um, surface.valleys, surface.aligned);
   }
   return finding;
 }

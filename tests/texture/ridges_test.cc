@@ -23,7 +23,7 @@ struct Lengths {
   double min_mm = 0;
   double max_mm = 0;
 };
-constexpr Lengths kLumps{2, 3};
+constexpr Lengths kLumps{2.5, 3.5};
 constexpr Lengths kWander{12, 16};
 
 // Random by line, a wave along it, standard deviation 1.
@@ -63,9 +63,9 @@ Patch Waved(double darkness_sd_mm, double top_sd, Lengths lengths) {
        .top = [&](int line, double along) { return 1 + top_sd * tops(line, along); }});
 }
 
-// Variance within a millimetre of a wave of variance 1, as docs/metrics.md defines it, of means
-// over 0.5 mm: analytic, the mean over the lengths.
-double ShortVariance(Lengths lengths) {
+// Covariance of a wave of variance 1 with itself 0.5 mm on, of means over 0.5 mm: analytic, the
+// mean over the lengths. Such waves are gone, and more, 1 mm on: all of it counts as ridges'.
+double CovarianceNear(Lengths lengths) {
   double sum = 0;
   constexpr int kSteps = 100;
   for (int i = 0; i < kSteps; ++i) {
@@ -73,14 +73,14 @@ double ShortVariance(Lengths lengths) {
         lengths.min_mm + (i + 0.5) / kSteps * (lengths.max_mm - lengths.min_mm);
     const double turn = std::numbers::pi * 0.5 / length_mm;  // half of 0.5 mm
     const double kept = std::sin(turn) / turn;
-    sum += kept * kept * (0.84 * std::cos(2 * turn) - std::cos(4 * turn)) / (0.84 - 0.59);
+    sum += kept * kept * std::cos(2 * turn);
   }
   return sum / kSteps;
 }
 
 // Height of ridges that make the bottoms of valleys vary by `bottom_pct`, in a gray coupon.
 double WantUm(double bottom_pct) {
-  return 9 / (1 - 0.35 * 0.4) * bottom_pct * std::sqrt(ShortVariance(kLumps));
+  return 9 / (1 - 0.35 * 0.4) * bottom_pct * std::sqrt(CovarianceNear(kLumps));
 }
 
 // A box much narrower than a Gaussian blur darkens its middle by width / (sd root 2 pi) (common
