@@ -86,5 +86,19 @@ TEST(WallGaps, WithoutWallsThereIsAReason) {
   }
 }
 
+TEST(WallGaps, OnAFailedCouponThereIsAReason) {
+  const Patch patch = WithSeam(0.6, 0.08, 6);
+  const CouponDescription coupon = SquareCoupon();
+  Surface surface = MakeSurface(patch, coupon);
+  surface.torn.area_pct = 20;
+  const Finding walls = WallGapsMetric().measure(surface);
+  ASSERT_EQ(walls.features.size(), WallGapsMetric().features.size());
+  for (const Feature& feature : walls.features) {
+    EXPECT_FALSE(feature.value.has_value());
+    EXPECT_FALSE(feature.reason.empty());
+  }
+  EXPECT_TRUE(walls.marks.empty());
+}
+
 }  // namespace
 }  // namespace laygauge
