@@ -10,3 +10,15 @@
 #else
 #define LAYGAUGE_WIDE_VECTORS
 #endif
+
+namespace laygauge {
+
+// Eight floats that are added and multiplied at once; at any address of floats. For loops whose
+// sums a compiler may not rearrange by itself.
+using EightFloats = float __attribute__((vector_size(32), aligned(4), may_alias));
+
+inline const EightFloats* EightAt(const float* first) {
+  return reinterpret_cast<const EightFloats*>(first);
+}
+
+}  // namespace laygauge

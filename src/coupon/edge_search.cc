@@ -32,13 +32,10 @@ void AddSteps(const std::vector<EdgePoint>& points, size_t stride, int side, int
   for (int y = 0; y < side; ++y) {
     for (int block = 0; block < blocks; ++block) {
       const size_t offset = static_cast<size_t>(y) * stride + static_cast<size_t>(block) * kWide;
-      float sums[kWide] = {};
+      EightFloats sums = {};
       for (const EdgePoint& point : points) {
-        const float* gx = point.by_x + offset;
-        const float* gy = point.by_y + offset;
-        for (int i = 0; i < kWide; ++i) {
-          sums[i] += gx[i] * point.outward_x + gy[i] * point.outward_y;
-        }
+        sums += *EightAt(point.by_x + offset) * point.outward_x +
+                *EightAt(point.by_y + offset) * point.outward_y;
       }
       float* out = steps + (static_cast<size_t>(y) * blocks + block) * kWide;
       for (int i = 0; i < kWide; ++i) out[i] = sums[i];
@@ -69,15 +66,15 @@ struct PieceScorer {
              std::vector<float>& steps) {
     const cv::Point2d corner = grid.middle.center_mm * gradient.px_per_mm + gradient.origin_px -
                                cv::Point2d(reach_px, reach_px);
-    const int last_x = std::max(0, gradient.by_x.cols - side);
-    const int last_y = std::max(0, gradient.by_x.rows - side);
+    const double last_x = std::max(0, gradient.by_x.cols - side);
+    const double last_y = std::max(0, gradient.by_x.rows - side);
     points.clear();
     for (size_t i = 0; i < piece.points_mm.size(); ++i) {
       const cv::Point2d point_mm = piece.points_mm[i] + piece.outward[i] * outward_mm;
       const cv::Point2d first_px = corner + turn(point_mm) * gradient.px_per_mm;
       const cv::Point2f outward = turn(piece.outward[i]);
-      const int x = std::clamp(static_cast<int>(std::lround(first_px.x)), 0, last_x);
-      const int y = std::clamp(static_cast<int>(std::lround(first_px.y)), 0, last_y);
+      const int x = static_cast<int>(std::clamp(first_px.x + 0.5, 0.0, last_x));
+      const int y = static_cast<int>(std::clamp(first_px.y + 0.5, 0.0, last_y));
       points.push_back(
           {gradient.by_x.ptr<float>(y) + x, gradient.by_y.ptr<float>(y) + x, outward.x, outward.y});
     }
@@ -116,7 +113,8 @@ struct PieceScorer {
 
 // A picture whose rows can be read kWide - 1 pixels beyond their end.
 cv::Mat WithRoomBeside(const cv::Size& size) {
-  const cv::Mat wide = cv::Mat::zeros(size.height, size.width + kWide - 1, CV_32FC1);
+  cv::Mat wide(size.height, size.width + kWide - 1, CV_32FC1);
+  wide.colRange(size.width, wide.cols).setTo(0);
   return wide.colRange(0, size.width);
 }
 

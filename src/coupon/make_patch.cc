@@ -6,6 +6,7 @@
 #include <numeric>
 #include <vector>
 
+#include "base/vectorize.h"
 #include "coupon/rectify.h"
 
 namespace laygauge {
@@ -52,18 +53,22 @@ struct FieldSum {
   double clipped_pct = 0;
 };
 
+// By column: many sums that grow at once.
+LAYGAUGE_WIDE_VECTORS
+void AddFieldRow(const float* value, const std::uint8_t* region, float clip,
+                 std::vector<float>& sums, std::vector<int>& clipped) {
+  for (size_t x = 0; x < sums.size(); ++x) {
+    const bool in_field = region[x] == static_cast<std::uint8_t>(Region::kField);
+    sums[x] += in_field ? value[x] : 0.F;
+    clipped[x] += in_field && value[x] >= clip ? 1 : 0;
+  }
+}
+
 FieldSum SumField(const cv::Mat& picture, const CouponRegions& regions, float clip) {
-  // By column: sums that the compiler can make several of at once.
   std::vector<float> sums(picture.cols, 0.F);
   std::vector<int> clipped(picture.cols, 0);
   for (int y = 0; y < picture.rows; ++y) {
-    const auto* value = picture.ptr<float>(y);
-    const auto* region = regions.regions.ptr<std::uint8_t>(y);
-    for (int x = 0; x < picture.cols; ++x) {
-      const bool in_field = region[x] == static_cast<std::uint8_t>(Region::kField);
-      sums[x] += in_field ? value[x] : 0.F;
-      clipped[x] += in_field && value[x] >= clip ? 1 : 0;
-    }
+    AddFieldRow(picture.ptr<float>(y), regions.regions.ptr<std::uint8_t>(y), clip, sums, clipped);
   }
   const auto count = static_cast<double>(regions.field_pixels);
   return {std::accumulate(sums.begin(), sums.end(), 0.0) / count,

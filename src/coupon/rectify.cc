@@ -134,35 +134,46 @@ const std::array<Weights, kPhases + 1>& SplineWeights() {
   return table;
 }
 
-// Source pixels of one row of the frame, by bilinear interpolation between the nodes.
-void MapRow(const NodeMap& map, int y, int width, const cv::Point2f& corner, std::vector<float>& xs,
-            std::vector<float>& ys) {
-  const int node_row = y / kNodeStep_px;
-  const float down = static_cast<float>(y % kNodeStep_px) / kNodeStep_px;
-  for (int node = 0, x = 0; x < width; ++node, x += kNodeStep_px) {
-    const cv::Point2f left =
-        map.At(node, node_row) * (1 - down) + map.At(node, node_row + 1) * down - corner;
-    const cv::Point2f right =
-        map.At(node + 1, node_row) * (1 - down) + map.At(node + 1, node_row + 1) * down - corner;
-    const cv::Point2f step = (right - left) / static_cast<float>(kNodeStep_px);
-    const int count = std::min(kNodeStep_px, width - x);
-    for (int i = 0; i < count; ++i) {
-      xs[x + i] = left.x + static_cast<float>(i) * step.x;
-      ys[x + i] = left.y + static_cast<float>(i) * step.y;
-    }
+using Floats = std::array<float, kNodeStep_px>;
+using Ints = std::array<int, kNodeStep_px>;
+
+// Source pixels of a stretch of one row of the frame, between two columns of nodes.
+struct Stretch {
+  int count = 0;
+  Floats xs{};
+  Floats ys{};
+};
+
+// By bilinear interpolation between the nodes, `row` pixels below the upper ones.
+void MapStretch(const NodeMap& map, int column, int node_row, int row, const cv::Point2f& corner,
+                Stretch& stretch) {
+  const float down = static_cast<float>(row) / kNodeStep_px;
+  const cv::Point2f left =
+      map.At(column, node_row) * (1 - down) + map.At(column, node_row + 1) * down - corner;
+  const cv::Point2f right =
+      map.At(column + 1, node_row) * (1 - down) + map.At(column + 1, node_row + 1) * down - corner;
+  const cv::Point2f step = (right - left) / static_cast<float>(kNodeStep_px);
+  for (int i = 0; i < kNodeStep_px; ++i) {
+    stretch.xs[i] = left.x + static_cast<float>(i) * step.x;
+    stretch.ys[i] = left.y + static_cast<float>(i) * step.y;
   }
 }
 
-// The frame, row by row: sampler.Row(xs, ys, out) samples at the source pixels (xs, ys).
+// sampler.Sample(stretch, out) samples at the source pixels. Square by square between the nodes:
+// however the frame is turned in the photo, a square's source stays in the cache.
 template <class Sampler>
 cv::Mat SampleFrame(const NodeMap& map, const cv::Size& size, const cv::Point2f& corner,
                     Sampler sampler) {
   cv::Mat result(size, CV_32FC1);
-  std::vector<float> xs(size.width);
-  std::vector<float> ys(size.width);
-  for (int y = 0; y < size.height; ++y) {
-    MapRow(map, y, size.width, corner, xs, ys);
-    sampler.Row(xs, ys, result.ptr<float>(y));
+  Stretch stretch;
+  for (int top = 0; top < size.height; top += kNodeStep_px) {
+    for (int left = 0; left < size.width; left += kNodeStep_px) {
+      stretch.count = std::min(kNodeStep_px, size.width - left);
+      for (int y = top; y < std::min(top + kNodeStep_px, size.height); ++y) {
+        MapStretch(map, left / kNodeStep_px, top / kNodeStep_px, y - top, corner, stretch);
+        sampler.Sample(stretch, result.ptr<float>(y) + left);
+      }
+    }
   }
   return result;
 }
@@ -197,14 +208,10 @@ class EncodedSampler {
   explicit EncodedSampler(const cv::Mat& encoded)
       : encoded_(encoded), beside_(encoded.cols > 1 ? 1 : 0), below_(encoded.rows > 1 ? 1 : 0) {}
 
-  void Row(const std::vector<float>& xs, const std::vector<float>& ys, float* out) {
-    const size_t count = xs.size();
-    for (auto* scratch : {&columns_, &rows_}) scratch->resize(count);
-    for (auto* scratch : {&right_, &down_}) scratch->resize(count);
-    for (auto& corner : corners_) corner.resize(count);
-    Split(xs, encoded_.cols - 1, columns_.data(), right_.data());
-    Split(ys, encoded_.rows - 1, rows_.data(), down_.data());
-    for (size_t i = 0; i < count; ++i) {
+  void Sample(const Stretch& at, float* out) {
+    Split(at.xs, encoded_.cols - 1, columns_, right_);
+    Split(at.ys, encoded_.rows - 1, rows_, down_);
+    for (int i = 0; i < at.count; ++i) {
       const auto* p = encoded_.ptr<Pixel>(rows_[i]) + columns_[i];
       const auto* q = encoded_.ptr<Pixel>(rows_[i] + below_) + columns_[i];
       corners_[0][i] = p[0];
@@ -212,28 +219,28 @@ class EncodedSampler {
       corners_[2][i] = q[0];
       corners_[3][i] = q[beside_];
     }
-    Mix(out);
+    Mix(at.count, out);
   }
 
  private:
   // Whole pixels, such that there is a next one, and the rest.
-  static void Split(const std::vector<float>& at, int last, int* whole, float* rest) {
+  static void Split(const Floats& at, int last, Ints& whole, Floats& rest) {
     const auto largest = static_cast<float>(last);
     const int largest_whole = std::max(0, last - 1);
-    for (size_t i = 0; i < at.size(); ++i) {
+    for (int i = 0; i < kNodeStep_px; ++i) {
       const float inside = std::min(std::max(at[i], 0.F), largest);
       whole[i] = std::min(static_cast<int>(inside), largest_whole);
       rest[i] = inside - static_cast<float>(whole[i]);
     }
   }
 
-  void Mix(float* out) const {
+  void Mix(int count, float* out) const {
     constexpr float kUnit = 1.F / static_cast<float>(std::numeric_limits<Pixel>::max());
     const int* a = corners_[0].data();
     const int* b = corners_[1].data();
     const int* c = corners_[2].data();
     const int* d = corners_[3].data();
-    for (size_t i = 0; i < right_.size(); ++i) {
+    for (int i = 0; i < count; ++i) {
       const float right = right_[i];
       const float upper = static_cast<float>(a[i]) * (1 - right) + static_cast<float>(b[i]) * right;
       const float lower = static_cast<float>(c[i]) * (1 - right) + static_cast<float>(d[i]) * right;
@@ -244,11 +251,11 @@ class EncodedSampler {
   const cv::Mat& encoded_;
   int beside_;
   int below_;
-  std::vector<int> columns_;
-  std::vector<int> rows_;
-  std::vector<float> right_;
-  std::vector<float> down_;
-  std::array<std::vector<int>, 4> corners_;  // upper left, right, lower left, right
+  Ints columns_{};
+  Ints rows_{};
+  Floats right_{};
+  Floats down_{};
+  std::array<Ints, 4> corners_{};  // upper left, right, lower left, right
 };
 
 // Samples the spline of a picture: pixel (0, 0) of the picture is (pad, pad) of `coefficients`.
@@ -260,31 +267,27 @@ class SplineSampler {
         largest_x_(std::max(0.F, static_cast<float>(size.width) - 1.001F)),
         largest_y_(std::max(0.F, static_cast<float>(size.height) - 1.001F)) {}
 
-  void Row(const std::vector<float>& xs, const std::vector<float>& ys, float* out) {
-    const size_t count = xs.size();
-    offsets_.resize(count);
-    across_.resize(count);
-    down_.resize(count);
-    for (size_t i = 0; i < count; ++i) {
-      const float x = std::min(std::max(xs[i], 0.F), largest_x_);
-      const float y = std::min(std::max(ys[i], 0.F), largest_y_);
+  void Sample(const Stretch& at, float* out) {
+    for (int i = 0; i < kNodeStep_px; ++i) {
+      const float x = std::min(std::max(at.xs[i], 0.F), largest_x_);
+      const float y = std::min(std::max(at.ys[i], 0.F), largest_y_);
       const int column = static_cast<int>(x);
       const int row = static_cast<int>(y);
       offsets_[i] = row * stride_ + column;
       across_[i] = static_cast<int>((x - static_cast<float>(column)) * kPhases + 0.5F);
       down_[i] = static_cast<int>((y - static_cast<float>(row)) * kPhases + 0.5F);
     }
-    size_t i = 0;
-    for (; i + 4 <= count; i += 4) {
+    int i = 0;
+    for (; i + 4 <= at.count; i += 4) {
       cv::v_store(out + i, cv::v_reduce_sum4(Products(i), Products(i + 1), Products(i + 2),
                                              Products(i + 3)));
     }
-    for (; i < count; ++i) out[i] = cv::v_reduce_sum(Products(i));
+    for (; i < at.count; ++i) out[i] = cv::v_reduce_sum(Products(i));
   }
 
  private:
   // Of one sample: the four columns' sums, weighted.
-  [[nodiscard]] cv::v_float32x4 Products(size_t i) const {
+  [[nodiscard]] cv::v_float32x4 Products(int i) const {
     const float* p = data_ + offsets_[i];
     const Weights& down = weights_[down_[i]];
     cv::v_float32x4 sum = cv::v_load(p) * cv::v_setall_f32(down[0]);
@@ -299,9 +302,9 @@ class SplineSampler {
   float largest_x_;
   float largest_y_;
   const std::array<Weights, kPhases + 1>& weights_ = SplineWeights();
-  std::vector<int> offsets_;
-  std::vector<int> across_;
-  std::vector<int> down_;
+  Ints offsets_{};
+  Ints across_{};
+  Ints down_{};
 };
 
 }  // namespace

@@ -7,6 +7,7 @@
 #include <vector>
 
 #include "base/error.h"
+#include "base/vectorize.h"
 
 namespace laygauge {
 namespace {
@@ -26,24 +27,48 @@ struct Row {
   std::vector<float> crossings_mm;    // where the row meets the outline, sorted
 };
 
+// Lowers `squares` to the squared distances of the row's pixels from a straight edge a -> b.
+LAYGAUGE_WIDE_VECTORS
+void NearEdge(const std::vector<float>& x_mm, float y_mm, const cv::Point2f& a,
+              const cv::Point2f& b, std::vector<float>& squares) {
+  const cv::Point2f along = b - a;
+  const float per_length2 = 1 / along.dot(along);
+  const float dy = y_mm - a.y;
+  const float* xs = x_mm.data();
+  float* out = squares.data();
+  for (size_t c = 0; c < x_mm.size(); ++c) {
+    const float dx = xs[c] - a.x;
+    const float t = std::min(std::max((dx * along.x + dy * along.y) * per_length2, 0.F), 1.F);
+    const float ex = dx - t * along.x;
+    const float ey = dy - t * along.y;
+    out[c] = std::min(out[c], ex * ex + ey * ey);
+  }
+}
+
+// Lowers `distances` to those from a hole's edge.
+LAYGAUGE_WIDE_VECTORS
+void NearHole(const std::vector<float>& x_mm, float y_mm, const Hole& hole,
+              std::vector<float>& distances) {
+  const auto hole_x = static_cast<float>(hole.x_mm);
+  const float dy = y_mm - static_cast<float>(hole.y_mm);
+  const auto radius = static_cast<float>(hole.diameter_mm / 2);
+  const float* xs = x_mm.data();
+  float* out = distances.data();
+  for (size_t c = 0; c < x_mm.size(); ++c) {
+    const float dx = xs[c] - hole_x;
+    out[c] = std::min(out[c], std::sqrt(dx * dx + dy * dy) - radius);
+  }
+}
+
 void MeasureOutline(const std::vector<cv::Point2d>& outline, float y_mm, Row& row) {
   std::fill(row.to_outline_mm2.begin(), row.to_outline_mm2.end(), 1e12F);
   row.crossings_mm.clear();
   for (size_t i = 0; i < outline.size(); ++i) {
     const cv::Point2f a = outline[i];
     const cv::Point2f b = outline[(i + 1) % outline.size()];
-    const cv::Point2f along = b - a;
-    const float per_length2 = 1 / along.dot(along);
-    const float dy = y_mm - a.y;
-    for (size_t c = 0; c < row.x_mm.size(); ++c) {
-      const float dx = row.x_mm[c] - a.x;
-      const float t = std::clamp((dx * along.x + dy * along.y) * per_length2, 0.F, 1.F);
-      const float ex = dx - t * along.x;
-      const float ey = dy - t * along.y;
-      row.to_outline_mm2[c] = std::min(row.to_outline_mm2[c], ex * ex + ey * ey);
-    }
+    NearEdge(row.x_mm, y_mm, a, b, row.to_outline_mm2);
     if ((a.y > y_mm) != (b.y > y_mm)) {
-      row.crossings_mm.push_back(a.x + along.x * (y_mm - a.y) / along.y);
+      row.crossings_mm.push_back(a.x + (b.x - a.x) * (y_mm - a.y) / (b.y - a.y));
     }
   }
   std::sort(row.crossings_mm.begin(), row.crossings_mm.end());
@@ -51,15 +76,7 @@ void MeasureOutline(const std::vector<cv::Point2d>& outline, float y_mm, Row& ro
 
 void MeasureHoles(const std::vector<Hole>& holes, float y_mm, Row& row) {
   std::fill(row.to_hole_mm.begin(), row.to_hole_mm.end(), 1e6F);
-  for (const Hole& hole : holes) {
-    const auto hole_x = static_cast<float>(hole.x_mm);
-    const float dy = y_mm - static_cast<float>(hole.y_mm);
-    const auto radius = static_cast<float>(hole.diameter_mm / 2);
-    for (size_t c = 0; c < row.x_mm.size(); ++c) {
-      const float dx = row.x_mm[c] - hole_x;
-      row.to_hole_mm[c] = std::min(row.to_hole_mm[c], std::sqrt(dx * dx + dy * dy) - radius);
-    }
-  }
+  for (const Hole& hole : holes) NearHole(row.x_mm, y_mm, hole, row.to_hole_mm);
 }
 
 }  // namespace

@@ -6,6 +6,7 @@
 #include <numbers>
 #include <opencv2/core/hal/intrin.hpp>
 #include <opencv2/imgproc.hpp>
+#include <vector>
 
 namespace laygauge {
 namespace {
@@ -80,44 +81,79 @@ Span InsideSpan(cv::Point2d start, cv::Point2d step, int count, cv::Rect2d insid
           std::clamp(static_cast<int>(std::floor(high)) + 1, std::min(begin, count), count)};
 }
 
-// row: the pixel before and above the point.
-float Interpolate(const float* row, std::size_t stride, const Kernel& across, const Kernel& down) {
+// The weighted sums of four columns; `row`: the pixel before and above the point.
+cv::v_float32x4 Products(const float* row, std::size_t stride, const Kernel& across,
+                         const Kernel& down) {
   cv::v_float32x4 sum = cv::v_load(row) * cv::v_setall_f32(down[0]);
   sum += cv::v_load(row + stride) * cv::v_setall_f32(down[1]);
   sum += cv::v_load(row + 2 * stride) * cv::v_setall_f32(down[2]);
   sum += cv::v_load(row + 3 * stride) * cv::v_setall_f32(down[3]);
-  return cv::v_reduce_sum(sum * cv::v_load(across.data()));
+  return sum * cv::v_load(across.data());
 }
 
-// One row of the turned field: pixels `span` of the walk start + u * step over the patch; 1 and
-// kOff beyond them.
-void SampleRow(const Patch& patch, cv::Point2d start, cv::Point2d step, Span span, int count,
-               float* relative, std::uint8_t* regions) {
-  std::fill(relative, relative + span.begin, 1.0F);
-  std::fill(relative + span.end, relative + count, 1.0F);
-  std::fill(regions, regions + span.begin, static_cast<std::uint8_t>(Region::kOff));
-  std::fill(regions + span.end, regions + count, static_cast<std::uint8_t>(Region::kOff));
-  static const std::array<Kernel, kSteps> kernels = CubicKernels();
-  // Fixed point in steps: half a step is added so that shifting rounds.
-  constexpr double kOne = 1 << 16;
+constexpr double kOne = 1 << 16;  // a step in the fixed point of a walk
+
+// A walk over the patch that makes one row of the turned field: pixels `span` of it.
+struct Walk {
+  Span span;
+  std::int64_t x = 0;  // at the row's first pixel, with half a step added so that shifting rounds
+  std::int64_t y = 0;
+  std::int64_t step_x = 0;
+  std::int64_t step_y = 0;
+};
+
+Walk MakeWalk(cv::Point2d start, cv::Point2d step, Span span) {
   const auto fixed = [](double v) {
     return static_cast<std::int64_t>(std::llround(v * kSteps * kOne));
   };
-  std::int64_t x = fixed(start.x + span.begin * step.x) + (1 << 15);
-  std::int64_t y = fixed(start.y + span.begin * step.y) + (1 << 15);
-  const std::int64_t step_x = fixed(step.x);
-  const std::int64_t step_y = fixed(step.y);
+  Walk walk{span, 0, 0, fixed(step.x), fixed(step.y)};
+  walk.x = fixed(start.x + span.begin * step.x) + (1 << 15) - span.begin * walk.step_x;
+  walk.y = fixed(start.y + span.begin * step.y) + (1 << 15) - span.begin * walk.step_y;
+  return walk;
+}
+
+// Pixels [begin, end) of a row of the turned field; 1 and kOff beyond the walk's span.
+void SampleWalk(const Patch& patch, const Walk& walk, int begin, int end, float* relative,
+                std::uint8_t* regions) {
+  static const std::array<Kernel, kSteps> kernels = CubicKernels();
   const std::size_t stride = patch.relative.step1();
   const std::size_t region_stride = patch.regions.step1();
   const auto* source = patch.relative.ptr<float>();
   const auto* source_regions = patch.regions.ptr<std::uint8_t>();
-  for (int u = span.begin; u < span.end; ++u, x += step_x, y += step_y) {
-    const auto sx = static_cast<std::size_t>(x >> 16);
-    const auto sy = static_cast<std::size_t>(y >> 16);
-    relative[u] = Interpolate(source + (sy / kSteps - 1) * stride + sx / kSteps - 1, stride,
-                              kernels[sx % kSteps], kernels[sy % kSteps]);
+  const auto sample = [&](int u) {
+    const auto sx = static_cast<std::size_t>((walk.x + u * walk.step_x) >> 16);
+    const auto sy = static_cast<std::size_t>((walk.y + u * walk.step_y) >> 16);
     regions[u] =
         source_regions[(sy + kSteps / 2) / kSteps * region_stride + (sx + kSteps / 2) / kSteps];
+    return Products(source + (sy / kSteps - 1) * stride + sx / kSteps - 1, stride,
+                    kernels[sx % kSteps], kernels[sy % kSteps]);
+  };
+  const int first = std::clamp(walk.span.begin, begin, end);
+  const int last = std::clamp(walk.span.end, first, end);
+  std::fill(relative + begin, relative + first, 1.0F);
+  std::fill(relative + last, relative + end, 1.0F);
+  std::fill(regions + begin, regions + first, static_cast<std::uint8_t>(Region::kOff));
+  std::fill(regions + last, regions + end, static_cast<std::uint8_t>(Region::kOff));
+  int u = first;
+  for (; u + 4 <= last; u += 4) {
+    cv::v_store(relative + u,
+                cv::v_reduce_sum4(sample(u), sample(u + 1), sample(u + 2), sample(u + 3)));
+  }
+  for (; u < last; ++u) relative[u] = cv::v_reduce_sum(sample(u));
+}
+
+// Square by square: however the field is turned, a square's source stays in the cache.
+void SampleSquares(const Patch& patch, const std::vector<Walk>& walks, AlignedField& aligned) {
+  constexpr int kSquare = 64;
+  const cv::Size size = aligned.relative.size();
+  for (int top = 0; top < size.height; top += kSquare) {
+    for (int left = 0; left < size.width; left += kSquare) {
+      for (int v = top; v < std::min(top + kSquare, size.height); ++v) {
+        SampleWalk(patch, walks[static_cast<std::size_t>(v)], left,
+                   std::min(left + kSquare, size.width), aligned.relative.ptr<float>(v),
+                   aligned.regions.ptr<std::uint8_t>(v));
+      }
+    }
   }
 }
 
@@ -147,11 +183,12 @@ AlignedField AlignField(const Patch& patch, double lay_deg) {
       cv::Rect2d(box.x - kBorderPx, box.y - kBorderPx, box.width - 1 + 2 * kBorderPx,
                  box.height - 1 + 2 * kBorderPx) &
       cv::Rect2d(1, 1, patch.relative.cols - 4, patch.relative.rows - 4);
+  std::vector<Walk> walks;
   for (int v = 0; v < size.height; ++v) {
     const cv::Point2d row_start = start + v * across;
-    SampleRow(patch, row_start, along, InsideSpan(row_start, along, size.width, inside), size.width,
-              aligned.relative.ptr<float>(v), aligned.regions.ptr<std::uint8_t>(v));
+    walks.push_back(MakeWalk(row_start, along, InsideSpan(row_start, along, size.width, inside)));
   }
+  SampleSquares(patch, walks, aligned);
   const double mm = 1 / patch.px_per_mm;
   const cv::Point2d start_mm = patch.CouponFromPixel(start);
   aligned.coupon_from_aligned = {along.x * mm, across.x * mm, start_mm.x,  //

@@ -2,12 +2,14 @@
 
 #include <fmt/format.h>
 
-#include <Eigen/Core>
+#include <array>
 #include <cmath>
 #include <numbers>
 #include <opencv2/imgproc.hpp>
+#include <utility>
 
 #include "base/error.h"
+#include "base/vectorize.h"
 
 namespace laygauge {
 namespace {
@@ -84,17 +86,63 @@ WindowedTile WindowTile(const Patch& patch, cv::Rect rect, const cv::Mat& window
   return tile;
 }
 
-// Squared magnitudes of the left half plane of `spectrum` (CV_32FC2) times `scale`.
-cv::Mat HalfPower(const cv::Mat& spectrum, double scale) {
-  cv::Mat power(spectrum.rows, spectrum.cols / 2 + 1, CV_32FC1);
-  for (int y = 0; y < power.rows; ++y) {
-    const auto* in = spectrum.ptr<cv::Vec2f>(y);
+// Squared magnitudes, times `scale`, of the left half plane of a real image's spectrum, side x
+// side, `side` even, in OpenCV's packed form: real and imaginary parts side by side, but for the
+// first and last column, which stand one below the other and hold half of their symmetric column.
+cv::Mat HalfPower(const cv::Mat& packed, double scale) {
+  const int side = packed.rows;
+  const auto factor = static_cast<float>(scale);
+  const auto square = [factor](float re, float im) { return factor * (re * re + im * im); };
+  cv::Mat power(side, side / 2 + 1, CV_32FC1);
+  for (int y = 0; y < side; ++y) {
+    const auto* in = packed.ptr<float>(y);
     auto* out = power.ptr<float>(y);
-    for (int x = 0; x < power.cols; ++x) {
-      out[x] = static_cast<float>(scale) * (in[x][0] * in[x][0] + in[x][1] * in[x][1]);
+    for (int x = 1; x < side / 2; ++x) out[x] = square(in[2 * x - 1], in[2 * x]);
+  }
+  for (const auto& [from, to] : {std::pair{0, 0}, std::pair{side - 1, side / 2}}) {
+    power.at<float>(0, to) = square(packed.at<float>(0, from), 0);
+    power.at<float>(side / 2, to) = square(packed.at<float>(side - 1, from), 0);
+    for (int y = 1; y < side / 2; ++y) {
+      power.at<float>(y, to) =
+          square(packed.at<float>(2 * y - 1, from), packed.at<float>(2 * y, from));
+      power.at<float>(side - y, to) = power.at<float>(y, to);
     }
   }
   return power;
+}
+
+// A wave along x: its cosine and sine at a tile's columns.
+struct RowWave {
+  std::vector<float> cosine;
+  std::vector<float> sine;
+};
+
+// Sums of two neighbouring rows times the wave: cosine and sine of the first, then of the second.
+LAYGAUGE_WIDE_VECTORS
+std::array<float, 4> CorrelateRows(const float* row, int side, const RowWave& wave) {
+  constexpr int kWide = 8;
+  const float* next = row + side;
+  const float* cosine = wave.cosine.data();
+  const float* sine = wave.sine.data();
+  EightFloats sums[4] = {};
+  int x = 0;
+  for (; x + kWide <= side; x += kWide) {
+    sums[0] += *EightAt(row + x) * *EightAt(cosine + x);
+    sums[1] += *EightAt(row + x) * *EightAt(sine + x);
+    sums[2] += *EightAt(next + x) * *EightAt(cosine + x);
+    sums[3] += *EightAt(next + x) * *EightAt(sine + x);
+  }
+  std::array<float, 4> totals{};
+  for (size_t k = 0; k < 4; ++k) {
+    for (int i = 0; i < kWide; ++i) totals[k] += sums[k][i];
+  }
+  for (; x < side; ++x) {
+    totals[0] += row[x] * cosine[x];
+    totals[1] += row[x] * sine[x];
+    totals[2] += next[x] * cosine[x];
+    totals[3] += next[x] * sine[x];
+  }
+  return totals;
 }
 
 }  // namespace
@@ -131,7 +179,7 @@ FieldSpectrum MeasureFieldSpectrum(const Patch& patch, const FieldSpectrumOption
       if (tile.share < options.min_field_share) {
         continue;
       }
-      cv::dft(tile.values, spectrum, cv::DFT_COMPLEX_OUTPUT);
+      cv::dft(tile.values, spectrum);
       // Parseval: the plane's sum of |X|^2 is side^2 times the sum of squared weighted values.
       const double scale = 1.0 / (static_cast<double>(side) * side * tile.weight_squares);
       const cv::Point2d centre(x + (side - 1) / 2.0, y + (side - 1) / 2.0);
@@ -149,42 +197,47 @@ FieldSpectrum MeasureFieldSpectrum(const Patch& patch, const FieldSpectrumOption
   return result;
 }
 
-std::vector<std::vector<std::complex<double>>> DemodulateTiles(const FieldSpectrum& spectrum,
-                                                               cv::Point2d frequency_per_mm,
-                                                               int harmonics) {
-  using RowMajor = Eigen::Matrix<float, Eigen::Dynamic, Eigen::Dynamic, Eigen::RowMajor>;
+std::vector<std::vector<std::complex<double>>> DemodulateTiles(
+    const FieldSpectrum& spectrum, const std::vector<cv::Point2d>& frequencies_per_mm) {
+  using Complex = std::complex<double>;
   const int side = spectrum.side_px;
   const double centre = (side - 1) / 2.0;
-  // Columns 2h and 2h + 1: cosine and sine of harmonic h + 1 along x; the same along y.
-  Eigen::MatrixXf along_x(side, 2 * harmonics);
-  Eigen::MatrixXcd along_y(side, harmonics);
-  for (int h = 0; h < harmonics; ++h) {
-    const cv::Point2d cycles = (h + 1.0) / spectrum.px_per_mm * frequency_per_mm;
+  const size_t count = frequencies_per_mm.size();
+  std::vector<RowWave> along_x(count);
+  std::vector<std::vector<Complex>> along_y(count);
+  for (size_t k = 0; k < count; ++k) {
+    const cv::Point2d cycles = frequencies_per_mm[k] / spectrum.px_per_mm;
     for (int i = 0; i < side; ++i) {
       const double turn = 2 * std::numbers::pi * (i - centre);
-      along_x(i, 2 * h) = static_cast<float>(std::cos(turn * cycles.x));
-      along_x(i, 2 * h + 1) = static_cast<float>(std::sin(turn * cycles.x));
-      along_y(i, h) = std::polar(1.0, -turn * cycles.y);
+      along_x[k].cosine.push_back(static_cast<float>(std::cos(turn * cycles.x)));
+      along_x[k].sine.push_back(static_cast<float>(std::sin(turn * cycles.x)));
+      along_y[k].push_back(std::polar(1.0, -turn * cycles.y));
     }
   }
-  std::vector<std::vector<std::complex<double>>> amplitudes;
+  std::vector<std::vector<Complex>> amplitudes;
   for (const SpectrumTile& tile : spectrum.tiles) {
-    const Eigen::Map<const RowMajor> values(tile.values.ptr<float>(), side, side);
-    // Column by column: the packing that pays for large products takes longer than these do.
-    Eigen::MatrixXd rows(side, along_x.cols());
-    for (Eigen::Index c = 0; c < along_x.cols(); ++c) {
-      rows.col(c) = (values * along_x.col(c)).cast<double>();
+    auto& sums = amplitudes.emplace_back(count);
+    for (int y = 0; y < side; y += 2) {
+      for (size_t k = 0; k < count; ++k) {
+        const auto [c0, s0, c1, s1] = CorrelateRows(tile.values.ptr<float>(y), side, along_x[k]);
+        const auto at = static_cast<size_t>(y);
+        sums[k] += along_y[k][at] * Complex(c0, -s0) + along_y[k][at + 1] * Complex(c1, -s1);
+      }
     }
-    auto& of_tile = amplitudes.emplace_back(harmonics);
-    for (int h = 0; h < harmonics; ++h) {
-      const std::complex<double> i(0, 1);
-      const Eigen::VectorXcd row = rows.col(2 * h) - i * rows.col(2 * h + 1);
-      const double turn = 2 * std::numbers::pi * (h + 1) * frequency_per_mm.dot(tile.centre_mm);
-      of_tile[h] = 2 / tile.weight_sum * std::polar(1.0, -turn) *
-                   (along_y.col(h).array() * row.array()).sum();
+    for (size_t k = 0; k < count; ++k) {
+      const double turn = 2 * std::numbers::pi * frequencies_per_mm[k].dot(tile.centre_mm);
+      sums[k] *= 2 / tile.weight_sum * std::polar(1.0, -turn);
     }
   }
   return amplitudes;
+}
+
+std::vector<std::vector<std::complex<double>>> DemodulateTiles(const FieldSpectrum& spectrum,
+                                                               cv::Point2d frequency_per_mm,
+                                                               int harmonics) {
+  std::vector<cv::Point2d> frequencies;
+  for (int k = 1; k <= harmonics; ++k) frequencies.push_back(k * frequency_per_mm);
+  return DemodulateTiles(spectrum, frequencies);
 }
 
 }  // namespace laygauge

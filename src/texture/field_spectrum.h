@@ -44,9 +44,14 @@ struct FieldSpectrum {
 [[nodiscard]] FieldSpectrum MeasureFieldSpectrum(const Patch& patch,
                                                  const FieldSpectrumOptions& options = {});
 
-// Complex amplitude of the wave cos(2 pi frequency . x) in each tile, x in mm from the coupon's
-// origin; entry (tile, harmonic - 1) is that of `harmonic` times the frequency. A wave
-// A cos(2 pi f . x + phi) in a whole tile gives A exp(i phi); the window's sidelobes are its error.
+// Complex amplitude of the waves cos(2 pi frequency . x) in each tile, x in mm from the coupon's
+// origin; entry (tile, k) is that of the k-th frequency. A wave A cos(2 pi f . x + phi) in a whole
+// tile gives A exp(i phi); the window's sidelobes are its error. Several frequencies at once take
+// less time than one by one.
+[[nodiscard]] std::vector<std::vector<std::complex<double>>> DemodulateTiles(
+    const FieldSpectrum& spectrum, const std::vector<cv::Point2d>& frequencies_per_mm);
+
+// The same at 1, 2, ..., `harmonics` times a frequency.
 [[nodiscard]] std::vector<std::vector<std::complex<double>>> DemodulateTiles(
     const FieldSpectrum& spectrum, cv::Point2d frequency_per_mm, int harmonics);
 

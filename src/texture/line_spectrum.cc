@@ -6,6 +6,7 @@
 #include <algorithm>
 #include <cmath>
 #include <numbers>
+#include <numeric>
 #include <vector>
 
 #include "texture/line_contrast.h"
@@ -85,12 +86,11 @@ bool IsOverDivisor(const FieldSpectrum& spectrum, cv::Point2d strong, int diviso
   if (PowerNear(spectrum, low) < 0.5 * least * least * PowerNear(spectrum, strong)) {
     return false;
   }
-  double around = 0;
-  for (const double offset : {-0.16, -0.12, -0.08, 0.08, 0.12, 0.16}) {
-    around += CoherentPower(spectrum, low * (1 + offset)) / 6;
-  }
-  const double power = CoherentPower(spectrum, low);
-  return power > 8 * around && power > least * least * CoherentPower(spectrum, strong);
+  const std::vector<double> powers = CoherentPowers(
+      spectrum,
+      {low, strong, 0.84 * low, 0.88 * low, 0.92 * low, 1.08 * low, 1.12 * low, 1.16 * low});
+  const double around = std::accumulate(powers.begin() + 2, powers.end(), 0.0) / 6;
+  return powers[0] > 8 * around && powers[0] > least * least * powers[1];
 }
 
 // The fundamental's frequency, given that of the strongest peak; none: the peak is too fine for

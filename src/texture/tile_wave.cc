@@ -4,6 +4,7 @@
 #include <algorithm>
 #include <cmath>
 #include <numbers>
+#include <numeric>
 
 #include "texture/spectrum_peak.h"
 
@@ -12,20 +13,40 @@ namespace {
 
 constexpr double kTwoPi = 2 * std::numbers::pi;
 
-// Sum of the amplitudes, each turned back by the phase that `shift` gives at its tile.
-std::complex<double> CoherentSum(const FieldSpectrum& spectrum, const Amplitudes& amplitudes,
-                                 cv::Point2d shift) {
-  std::complex<double> sum = 0;
-  for (std::size_t t = 0; t < amplitudes.size(); ++t) {
-    sum += amplitudes[t] * std::polar(1.0, -kTwoPi * shift.dot(spectrum.tiles[t].centre_mm));
+// Sums of the amplitudes, each turned back by the phase that a shift of the frequency gives at its
+// tile, for all shifts (i, j) * step of a grid.
+class ShiftedSums {
+ public:
+  ShiftedSums(const FieldSpectrum& spectrum, const Amplitudes& amplitudes, double step, int reach)
+      : reach_(reach) {
+    for (int i = -reach; i <= reach; ++i) {
+      auto& by_x = by_x_.emplace_back();
+      auto& by_y = by_y_.emplace_back();
+      for (std::size_t t = 0; t < amplitudes.size(); ++t) {
+        const cv::Point2d turn = -kTwoPi * step * i * spectrum.tiles[t].centre_mm;
+        by_x.push_back(amplitudes[t] * std::polar(1.0, turn.x));
+        by_y.push_back(std::polar(1.0, turn.y));
+      }
+    }
   }
-  return sum;
-}
+
+  [[nodiscard]] std::complex<double> At(int i, int j) const {
+    const auto& by_x = by_x_[static_cast<std::size_t>(i + reach_)];
+    const auto& by_y = by_y_[static_cast<std::size_t>(j + reach_)];
+    return std::inner_product(by_x.begin(), by_x.end(), by_y.begin(), std::complex<double>(0));
+  }
+
+ private:
+  int reach_;
+  std::vector<Amplitudes> by_x_;  // amplitudes, turned by the shift along x
+  std::vector<Amplitudes> by_y_;  // turns by the shift along y
+};
 
 // Weighted least squares of the tiles' phases about their mean: phase = c + 2 pi shift . x.
 // Returns the shift; fills the wave's covariance.
 cv::Point2d FitPhases(const FieldSpectrum& spectrum, const Amplitudes& amplitudes, Wave& wave) {
-  const std::complex<double> sum = CoherentSum(spectrum, amplitudes, {});
+  const std::complex<double> sum =
+      std::accumulate(amplitudes.begin(), amplitudes.end(), std::complex<double>(0));
   Eigen::Matrix3d normal = Eigen::Matrix3d::Zero();
   Eigen::Vector3d right = Eigen::Vector3d::Zero();
   double weights = 0;
@@ -76,8 +97,15 @@ Amplitudes AmplitudesAt(const FieldSpectrum& spectrum, cv::Point2d frequency) {
   return result;
 }
 
-double CoherentPower(const FieldSpectrum& spectrum, cv::Point2d frequency) {
-  return std::norm(CoherentSum(spectrum, AmplitudesAt(spectrum, frequency), {}));
+std::vector<double> CoherentPowers(const FieldSpectrum& spectrum,
+                                   const std::vector<cv::Point2d>& frequencies) {
+  std::vector<std::complex<double>> sums(frequencies.size());
+  for (const auto& tile : DemodulateTiles(spectrum, frequencies)) {
+    for (std::size_t k = 0; k < sums.size(); ++k) sums[k] += tile[k];
+  }
+  std::vector<double> powers;
+  for (const auto& sum : sums) powers.push_back(std::norm(sum));
+  return powers;
 }
 
 namespace {
@@ -111,11 +139,16 @@ AgreedWave FindAgreedWave(const FieldSpectrum& spectrum, cv::Point2d coarse, dou
     }
   }
   const cv::Point2d second = harmonics == 2 ? PeakNear(spectrum, 2 * coarse) : cv::Point2d();
+  const double step = spectrum.bin_per_mm / (2 * kSteps);
+  std::vector<ShiftedSums> sums;
+  for (int h = 0; h < harmonics; ++h) {
+    sums.emplace_back(spectrum, amplitudes[h], (h + 1) * step, kSteps);
+  }
   AgreedWave best;
   double best_sum = -1;
   for (int i = -kSteps; i <= kSteps; ++i) {
     for (int j = -kSteps; j <= kSteps; ++j) {
-      const cv::Point2d shift = spectrum.bin_per_mm / (2 * kSteps) * cv::Point2d(i, j);
+      const cv::Point2d shift = step * cv::Point2d(i, j);
       double sum = 0;
       double better = 0;
       // Tiles in steps agree on a sharp wave's aliases, too: the second harmonic counts only where
@@ -123,8 +156,7 @@ AgreedWave FindAgreedWave(const FieldSpectrum& spectrum, cv::Point2d coarse, dou
       const double off = cv::norm(2 * (coarse + shift) - second);
       const int counting = harmonics == 2 && off > spectrum.bin_per_mm / 2 ? 1 : harmonics;
       for (int h = 0; h < counting; ++h) {
-        const double agreement =
-            std::norm(CoherentSum(spectrum, amplitudes[h], (h + 1.0) * shift)) / powers[h];
+        const double agreement = std::norm(sums[h].At(i, j)) / powers[h];
         sum += agreement;
         better = std::max(better, agreement);
       }

@@ -23,8 +23,9 @@ struct Wave {
 
 [[nodiscard]] Amplitudes AmplitudesAt(const FieldSpectrum& spectrum, cv::Point2d frequency);
 
-// Squared sum of the tiles' amplitudes: what the whole field holds of a wave.
-[[nodiscard]] double CoherentPower(const FieldSpectrum& spectrum, cv::Point2d frequency);
+// Squared sums of the tiles' amplitudes: what the whole field holds of each wave.
+[[nodiscard]] std::vector<double> CoherentPowers(const FieldSpectrum& spectrum,
+                                                 const std::vector<cv::Point2d>& frequencies);
 
 // The frequency, within half a bin of a coarse one, at which the tiles agree best on the wave and
 // its second harmonic (if not above `high_per_mm`): a grid of a twelfth of a bin. Each harmonic

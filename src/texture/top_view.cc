@@ -94,15 +94,27 @@ TopView MakeTopView(const Patch& patch, double lay_deg, const TornArea& torn) {
 }
 
 cv::Mat RemoveAlongRows(const cv::Mat& image, const TopView& view, double window_mm) {
-  const int length = 2 * static_cast<int>(std::lround(window_mm * view.px_per_mm / 2)) + 1;
-  cv::Mat one;
-  view.searched.convertTo(one, CV_32FC1, 1.0 / 255);
-  cv::Mat sum;
-  cv::Mat count;
-  cv::boxFilter(image.mul(one), sum, -1, {length, 1}, {-1, -1}, false, cv::BORDER_CONSTANT);
-  cv::boxFilter(one, count, -1, {length, 1}, {-1, -1}, false, cv::BORDER_CONSTANT);
-  cv::Mat rest = image - sum / cv::max(count, 1);
-  rest.setTo(0, view.searched == 0);
+  const int half = static_cast<int>(std::lround(window_mm * view.px_per_mm / 2));
+  cv::Mat rest(image.size(), CV_32FC1);
+  // Of the searched pixels before each column.
+  std::vector<double> sums(static_cast<size_t>(image.cols) + 1, 0.0);
+  std::vector<int> counts(sums.size(), 0);
+  for (int y = 0; y < image.rows; ++y) {
+    const auto* value = image.ptr<float>(y);
+    const auto* on = view.searched.ptr<std::uint8_t>(y);
+    auto* out = rest.ptr<float>(y);
+    for (int x = 0; x < image.cols; ++x) {
+      sums[x + 1] = sums[x] + (on[x] != 0 ? value[x] : 0.F);
+      counts[x + 1] = counts[x] + (on[x] != 0 ? 1 : 0);
+    }
+    for (int x = 0; x < image.cols; ++x) {
+      const int from = std::max(x - half, 0);
+      const int to = std::min(x + half + 1, image.cols);
+      const auto sum = static_cast<float>(sums[to] - sums[from]);
+      const auto count = static_cast<float>(std::max(counts[to] - counts[from], 1));
+      out[x] = on[x] != 0 ? value[x] - sum / count : 0.F;
+    }
+  }
   return rest;
 }
 

@@ -9,6 +9,7 @@
 #include <vector>
 
 #include "base/error.h"
+#include "base/vectorize.h"
 
 namespace laygauge {
 namespace {
@@ -83,6 +84,38 @@ struct Directions {
   cv::Mat count;  // judged pixels
 };
 
+// The same for each pixel of a row.
+struct DirectionRow {
+  std::vector<float> cosine;
+  std::vector<float> sine;
+  std::vector<float> weight;
+  std::vector<float> count;
+};
+
+// The row between its first and last pixel; `floor` is added to squared gradients.
+LAYGAUGE_WIDE_VECTORS
+void FindDirections(const float* above, const float* here, const float* below,
+                    const std::uint8_t* judged, float floor, DirectionRow& row) {
+  for (size_t x = 1; x + 1 < row.count.size(); ++x) {
+    const float one = judged[x] != 0 ? 1.F : 0.F;
+    const float gx = here[x + 1] - here[x - 1];
+    const float gy = below[x] - above[x];
+    const float square = gx * gx + gy * gy;
+    const float scale = one / (square + floor);
+    row.cosine[x] = (gx * gx - gy * gy) * scale;
+    row.sine[x] = 2 * gx * gy * scale;
+    row.weight[x] = square * scale;
+    row.count[x] = one;
+  }
+}
+
+void AddToCells(const std::vector<float>& pixels, cv::Mat& cells, int row) {
+  auto* out = cells.ptr<float>(row);
+  for (int cell = 0; cell < cells.cols; ++cell) {
+    for (int i = 0; i < kPixelsPerCell; ++i) out[cell] += pixels[cell * kPixelsPerCell + i];
+  }
+}
+
 Directions SumDirections(const Top& top, double window_mm) {
   const cv::Size cells(top.judged.cols / kPixelsPerCell, top.judged.rows / kPixelsPerCell);
   Directions sums;
@@ -90,32 +123,18 @@ Directions SumDirections(const Top& top, double window_mm) {
     m->create(cells, CV_32FC1);
     m->setTo(0);
   }
-  const float median = MedianSquaredGradient(top);
-  const float floor = std::max(median, 1e-12F);
+  const float floor = std::max(MedianSquaredGradient(top), 1e-12F);
+  DirectionRow row;
+  for (auto* part : {&row.cosine, &row.sine, &row.weight, &row.count}) {
+    part->assign(static_cast<size_t>(cells.width) * kPixelsPerCell, 0.F);
+  }
   for (int y = 1; y + 1 < cells.height * kPixelsPerCell; ++y) {
-    const auto* above = top.relative.ptr<float>(y - 1);
-    const auto* here = top.relative.ptr<float>(y);
-    const auto* below = top.relative.ptr<float>(y + 1);
-    const auto* judged = top.judged.ptr<std::uint8_t>(y);
-    const int row = y / kPixelsPerCell;
-    auto* cosine = sums.cosine.ptr<float>(row);
-    auto* sine = sums.sine.ptr<float>(row);
-    auto* weight = sums.weight.ptr<float>(row);
-    auto* count = sums.count.ptr<float>(row);
-    for (int x = 1; x + 1 < cells.width * kPixelsPerCell; ++x) {
-      if (judged[x] == 0) {
-        continue;
-      }
-      const float gx = here[x + 1] - here[x - 1];
-      const float gy = below[x] - above[x];
-      const float square = gx * gx + gy * gy;
-      const float scale = 1 / (square + floor);
-      const int cell = x / kPixelsPerCell;
-      cosine[cell] += (gx * gx - gy * gy) * scale;
-      sine[cell] += 2 * gx * gy * scale;
-      weight[cell] += square * scale;
-      count[cell] += 1;
-    }
+    FindDirections(top.relative.ptr<float>(y - 1), top.relative.ptr<float>(y),
+                   top.relative.ptr<float>(y + 1), top.judged.ptr<std::uint8_t>(y), floor, row);
+    AddToCells(row.cosine, sums.cosine, y / kPixelsPerCell);
+    AddToCells(row.sine, sums.sine, y / kPixelsPerCell);
+    AddToCells(row.weight, sums.weight, y / kPixelsPerCell);
+    AddToCells(row.count, sums.count, y / kPixelsPerCell);
   }
   const int side = OddCells(window_mm * top.px_per_mm / kPixelsPerCell);
   for (cv::Mat* m : {&sums.cosine, &sums.sine, &sums.weight}) {
