@@ -127,15 +127,18 @@ double SoftlyLimited(double value, double limit) {
 }  // namespace
 
 cv::Mat SeparableFilter::Apply(const cv::Mat& image) const {
-  cv::Mat sum;
+  constexpr int kRows = 128;  // strips of so many stay in the cache from term to term
+  cv::Mat sum(image.size(), CV_32FC1);
   cv::Mat part;
-  for (const Term& term : terms) {
-    cv::sepFilter2D(image, part, CV_32F, term.row, term.column, {-1, -1}, 0,
-                    cv::BORDER_REFLECT_101);
-    if (sum.empty()) {
-      cv::swap(sum, part);
-    } else {
-      sum += part;
+  for (int y = 0; y < image.rows; y += kRows) {
+    const cv::Range rows(y, std::min(y + kRows, image.rows));
+    const cv::Mat strip = image.rowRange(rows);  // filters see the rows beyond it
+    cv::Mat out = sum.rowRange(rows);
+    for (const Term& term : terms) {
+      const bool is_first = &term == &terms.front();
+      cv::sepFilter2D(strip, is_first ? out : part, CV_32F, term.row, term.column, {-1, -1}, 0,
+                      cv::BORDER_REFLECT_101);
+      if (!is_first) out += part;
     }
   }
   return sum;

@@ -25,8 +25,37 @@ void FillInverseLight(const Light& light, const PlaneFrame& frame, int y,
   }
 }
 
-// Divides the picture by the light, in place.
-void Level(const Light& light, const PlaneFrame& frame, cv::Mat& picture) {
+// Sums over the field, by column: many sums that grow at once.
+struct ColumnSums {
+  explicit ColumnSums(int columns) : values(columns, 0.F), clipped(columns, 0) {}
+  [[nodiscard]] double Sum() const { return std::accumulate(values.begin(), values.end(), 0.0); }
+
+  std::vector<float> values;
+  std::vector<int> clipped;  // field pixels at or above the clip
+};
+
+LAYGAUGE_WIDE_VECTORS
+void AddFieldRow(const float* value, const std::uint8_t* region, float clip, ColumnSums& sums) {
+  float* values = sums.values.data();
+  int* clipped = sums.clipped.data();
+  for (size_t x = 0; x < sums.values.size(); ++x) {
+    const bool in_field = region[x] == static_cast<std::uint8_t>(Region::kField);
+    values[x] += in_field ? value[x] : 0.F;
+    clipped[x] += in_field && value[x] >= clip ? 1 : 0;
+  }
+}
+
+struct FieldMeans {
+  double linear = 0;
+  double levelled = 0;
+  double clipped_pct = 0;
+};
+
+// Divides the picture by the light, in place. The field's means before and after.
+FieldMeans Level(const Light& light, const PlaneFrame& frame, const CouponRegions& regions,
+                 float clip, cv::Mat& picture) {
+  ColumnSums linear(picture.cols);
+  ColumnSums levelled(picture.cols);
   const size_t columns = picture.cols / kLightStep_px + 2;
   std::vector<float> upper(columns);
   std::vector<float> lower(columns);
@@ -38,6 +67,8 @@ void Level(const Light& light, const PlaneFrame& frame, cv::Mat& picture) {
     }
     const float down = static_cast<float>(y % kLightStep_px) / kLightStep_px;
     auto* row = picture.ptr<float>(y);
+    const auto* region = regions.regions.ptr<std::uint8_t>(y);
+    AddFieldRow(row, region, clip, linear);
     for (int x = 0, node = 0; x < picture.cols; x += kLightStep_px, ++node) {
       const float left = upper[node] + down * (lower[node] - upper[node]);
       const float right = upper[node + 1] + down * (lower[node + 1] - upper[node + 1]);
@@ -45,34 +76,11 @@ void Level(const Light& light, const PlaneFrame& frame, cv::Mat& picture) {
       const int count = std::min(kLightStep_px, picture.cols - x);
       for (int i = 0; i < count; ++i) row[x + i] *= left + static_cast<float>(i) * step;
     }
-  }
-}
-
-struct FieldSum {
-  double mean = 0;
-  double clipped_pct = 0;
-};
-
-// By column: many sums that grow at once.
-LAYGAUGE_WIDE_VECTORS
-void AddFieldRow(const float* value, const std::uint8_t* region, float clip,
-                 std::vector<float>& sums, std::vector<int>& clipped) {
-  for (size_t x = 0; x < sums.size(); ++x) {
-    const bool in_field = region[x] == static_cast<std::uint8_t>(Region::kField);
-    sums[x] += in_field ? value[x] : 0.F;
-    clipped[x] += in_field && value[x] >= clip ? 1 : 0;
-  }
-}
-
-FieldSum SumField(const cv::Mat& picture, const CouponRegions& regions, float clip) {
-  std::vector<float> sums(picture.cols, 0.F);
-  std::vector<int> clipped(picture.cols, 0);
-  for (int y = 0; y < picture.rows; ++y) {
-    AddFieldRow(picture.ptr<float>(y), regions.regions.ptr<std::uint8_t>(y), clip, sums, clipped);
+    AddFieldRow(row, region, clip, levelled);
   }
   const auto count = static_cast<double>(regions.field_pixels);
-  return {std::accumulate(sums.begin(), sums.end(), 0.0) / count,
-          100.0 * std::accumulate(clipped.begin(), clipped.end(), 0) / count};
+  const int clipped = std::accumulate(linear.clipped.begin(), linear.clipped.end(), 0);
+  return {linear.Sum() / count, levelled.Sum() / count, 100.0 * clipped / count};
 }
 
 }  // namespace
@@ -108,19 +116,18 @@ Expected<Patch> MakePatch(const Photo& photo, const View& view, const Light& lig
   patch.px_per_mm = regions.px_per_mm;
   patch.origin_px = regions.origin_px;
   constexpr float kClip = 0.985F;
-  const FieldSum linear = SumField(patch.relative, regions, kClip);
-  if (linear.clipped_pct > options.most_clipped_pct) {
+  const FieldMeans means = Level(light, frame, regions, kClip, patch.relative);
+  if (means.clipped_pct > options.most_clipped_pct) {
     return Unmeasurable(
         fmt::format("{:.1f} % of the coupon is over-exposed; take the photo with less exposure",
-                    linear.clipped_pct));
+                    means.clipped_pct));
   }
-  if (linear.mean < options.darkest_level) {
+  if (means.linear < options.darkest_level) {
     return Unmeasurable(
         fmt::format("the coupon is too dark: its mean is {:.2f} % of full scale; use more exposure",
-                    100 * linear.mean));
+                    100 * means.linear));
   }
-  Level(light, frame, patch.relative);
-  patch.level = SumField(patch.relative, regions, INFINITY).mean;
+  patch.level = means.levelled;
   patch.relative *= 1 / patch.level;
   return patch;
 }

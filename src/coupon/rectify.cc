@@ -263,7 +263,7 @@ class SplineSampler {
  public:
   SplineSampler(const cv::Mat& coefficients, const cv::Size& size, int pad)
       : stride_(static_cast<int>(coefficients.step1())),
-        data_(coefficients.ptr<float>(0) + (pad - 1) * stride_ + (pad - 1)),
+        data_(coefficients.ptr<float>(0) + (pad - 1) * (stride_ + 1)),
         largest_x_(std::max(0.F, static_cast<float>(size.width) - 1.001F)),
         largest_y_(std::max(0.F, static_cast<float>(size.height) - 1.001F)) {}
 
@@ -328,11 +328,11 @@ cv::Mat Rectify(const Photo& photo, const View& view, const PlaneFrame& frame) {
   cv::Mat linear = LinearRegion(photo, region);
   LimitToFrame(PhotoPixelsPerFramePixel(map), linear);
   FindSplineCoefficients(linear);
-  cv::Mat coefficients;
-  constexpr int kPad = 2;
-  cv::copyMakeBorder(linear, coefficients, kPad, kPad, kPad, kPad, cv::BORDER_REFLECT_101);
-  return SampleFrame(map, frame.size_px, region.tl(),
-                     SplineSampler(coefficients, region.size(), kPad));
+  // Where the photo's edge cut the region, samples may need coefficients beyond it.
+  const cv::Rect inner(1, 1, photo.size().width - 2, photo.size().height - 2);
+  const int pad = (region & inner) == region ? 0 : 2;
+  if (pad > 0) cv::copyMakeBorder(linear, linear, pad, pad, pad, pad, cv::BORDER_REFLECT_101);
+  return SampleFrame(map, frame.size_px, region.tl(), SplineSampler(linear, region.size(), pad));
 }
 
 cv::Mat RectifyEncoded(const Photo& photo, const View& view, const PlaneFrame& frame) {
