@@ -97,15 +97,15 @@ LAYGAUGE_WIDE_VECTORS
 void FindDirections(const float* above, const float* here, const float* below,
                     const std::uint8_t* judged, float floor, DirectionRow& row) {
   for (size_t x = 1; x + 1 < row.count.size(); ++x) {
-    const float one = judged[x] != 0 ? 1.F : 0.F;
-    const float gx = here[x + 1] - here[x - 1];
-    const float gy = below[x] - above[x];
+    const bool on = judged[x] != 0;
+    const float gx = on ? here[x + 1] - here[x - 1] : 0.F;
+    const float gy = on ? below[x] - above[x] : 0.F;
     const float square = gx * gx + gy * gy;
-    const float scale = one / (square + floor);
+    const float scale = 1 / (square + floor);
     row.cosine[x] = (gx * gx - gy * gy) * scale;
     row.sine[x] = 2 * gx * gy * scale;
     row.weight[x] = square * scale;
-    row.count[x] = one;
+    row.count[x] = on ? 1.F : 0.F;
   }
 }
 
