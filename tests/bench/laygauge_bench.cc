@@ -16,6 +16,7 @@
 #include <string>
 #include <vector>
 
+#include "base/memory.h"
 #include "batch/measure_photo.h"
 #include "coupon/rectify.h"
 #include "sheet/find_markers.h"
@@ -192,6 +193,7 @@ void PrintReferenceTimes(const Patch& patch) {
 }  // namespace laygauge
 
 int main(int argc, char** argv) {
+  laygauge::KeepFreedMemory();
   benchmark::Initialize(&argc, argv);
   cv::setNumThreads(1);
   const laygauge::Plate plate;
