@@ -44,6 +44,7 @@ Expected<RunSheet> ReadRunSheet(const std::filesystem::path& path,
       return BadInput(fmt::format("{}: batch and well may not be empty", table->Where(row)));
     }
     std::vector<std::string> settings;
+    settings.reserve(setting_indices.size());
     for (const size_t i : setting_indices) settings.push_back(fields[i]);
     if (!sheet.runs.emplace(key, std::move(settings)).second) {
       return BadInput(fmt::format("{}: well {} of batch {} is listed twice", table->Where(row),
