@@ -17,6 +17,7 @@ template <class Description>
 Problem NeitherNameNorFile(std::string_view kind, const std::string& named,
                            const std::vector<Description>& shipped) {
   std::vector<std::string> names;
+  names.reserve(shipped.size());
   for (const Description& description : shipped) names.push_back(description.name);
   return {ProblemKind::kBadInput, fmt::format("{}: neither a file nor a shipped {}; shipped are {}",
                                               named, kind, fmt::join(names, ", "))};
