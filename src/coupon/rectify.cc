@@ -274,8 +274,11 @@ class SplineSampler {
       const int column = static_cast<int>(x);
       const int row = static_cast<int>(y);
       offsets_[i] = row * stride_ + column;
+      // Never negative, and a cast is what the compiler can do eight at a time.
+      // NOLINTBEGIN(bugprone-incorrect-roundings)
       across_[i] = static_cast<int>((x - static_cast<float>(column)) * kPhases + 0.5F);
       down_[i] = static_cast<int>((y - static_cast<float>(row)) * kPhases + 0.5F);
+      // NOLINTEND(bugprone-incorrect-roundings)
     }
     int i = 0;
     for (; i + 4 <= at.count; i += 4) {

@@ -67,9 +67,10 @@ std::string EvidenceOf(const FaultRule& rule, const FeatureTable& features,
     }
   }
   for (const auto& [column, value] : settings) {
-    const bool matters =
-        std::any_of(rule.setting_words.begin(), rule.setting_words.end(),
-                    [&](std::string_view word) { return column.find(word) != std::string::npos; });
+    const bool matters = std::any_of(rule.setting_words.begin(), rule.setting_words.end(),
+                                     [&setting = column](std::string_view word) {
+                                       return setting.find(word) != std::string::npos;
+                                     });
     if (matters && !value.empty()) add(column, value);
   }
   return text;
