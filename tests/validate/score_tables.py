@@ -1,8 +1,8 @@
 """Agreement of the scores with the panel; time and memory."""
 
 import json
-import os
 import subprocess
+import sys
 import tempfile
 import time
 
@@ -48,17 +48,24 @@ def left_out_table():
     return "\n".join(lines)
 
 
+# Run in a small process of its own: a child starts with its parent's resident set.
+_WATCH = """
+import os, subprocess, sys
+child = subprocess.Popen(sys.argv[1:], stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL)
+_, status, usage = os.wait4(child.pid, 0)
+print(os.waitstatus_to_exitcode(status), usage.ru_utime + usage.ru_stime, usage.ru_maxrss)
+"""
+
+
 def _run(photo):
     """(seconds of processor time, peak MiB) of the whole process, one thread, pictures off."""
     with tempfile.TemporaryDirectory() as scratch:
-        child = subprocess.Popen([PROGRAM, "score", photo, "--threads", "1", "--pictures", "none",
-                                  "--out", scratch],
-                                 stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL)
-        _, status, usage = os.wait4(child.pid, 0)
-        child.returncode = os.waitstatus_to_exitcode(status)
-        if child.returncode != 0:
+        said = subprocess.run([sys.executable, "-c", _WATCH, PROGRAM, "score", photo, "--threads",
+                               "1", "--pictures", "none", "--out", scratch],
+                              check=True, capture_output=True, text=True).stdout.split()
+        if said[0] != "0":
             raise RuntimeError(f"score failed on {photo.name}")
-        return usage.ru_utime + usage.ru_stime, usage.ru_maxrss / 1024
+        return float(said[1]), float(said[2]) / 1024
 
 
 def _decode(photo):
