@@ -47,7 +47,7 @@ Finding MeasureFailure(const Surface& surface) {
 
 Metric FailureMetric() {
   return {"failure",
-          1,
+          2,
           {{"failure_area_pct", "torn, lifted or missing share of the field"}},
           &MeasureFailure};
 }

@@ -76,11 +76,13 @@ float MedianSquaredGradient(const Top& top) {
   return *middle;
 }
 
-// Sums over windows, in cells: the doubled angle's cosine and sine, and their weight.
+// Sums over windows, in cells: the doubled angle's cosine and sine, their weight, and the squared
+// gradient itself.
 struct Directions {
   cv::Mat cosine;
   cv::Mat sine;
   cv::Mat weight;
+  cv::Mat square;
   cv::Mat count;  // judged pixels
 };
 
@@ -89,6 +91,7 @@ struct DirectionRow {
   std::vector<float> cosine;
   std::vector<float> sine;
   std::vector<float> weight;
+  std::vector<float> square;
   std::vector<float> count;
 };
 
@@ -105,6 +108,7 @@ void FindDirections(const float* above, const float* here, const float* below,
     row.cosine[x] = (gx * gx - gy * gy) * scale;
     row.sine[x] = 2 * gx * gy * scale;
     row.weight[x] = square * scale;
+    row.square[x] = square;
     row.count[x] = on ? 1.F : 0.F;
   }
 }
@@ -119,13 +123,13 @@ void AddToCells(const std::vector<float>& pixels, cv::Mat& cells, int row) {
 Directions SumDirections(const Top& top, double window_mm) {
   const cv::Size cells(top.judged.cols / kPixelsPerCell, top.judged.rows / kPixelsPerCell);
   Directions sums;
-  for (cv::Mat* m : {&sums.cosine, &sums.sine, &sums.weight, &sums.count}) {
+  for (cv::Mat* m : {&sums.cosine, &sums.sine, &sums.weight, &sums.square, &sums.count}) {
     m->create(cells, CV_32FC1);
     m->setTo(0);
   }
   const float floor = std::max(MedianSquaredGradient(top), 1e-12F);
   DirectionRow row;
-  for (auto* part : {&row.cosine, &row.sine, &row.weight, &row.count}) {
+  for (auto* part : {&row.cosine, &row.sine, &row.weight, &row.square, &row.count}) {
     part->assign(static_cast<size_t>(cells.width) * kPixelsPerCell, 0.F);
   }
   for (int y = 1; y + 1 < cells.height * kPixelsPerCell; ++y) {
@@ -134,10 +138,11 @@ Directions SumDirections(const Top& top, double window_mm) {
     AddToCells(row.cosine, sums.cosine, y / kPixelsPerCell);
     AddToCells(row.sine, sums.sine, y / kPixelsPerCell);
     AddToCells(row.weight, sums.weight, y / kPixelsPerCell);
+    AddToCells(row.square, sums.square, y / kPixelsPerCell);
     AddToCells(row.count, sums.count, y / kPixelsPerCell);
   }
   const int side = OddCells(window_mm * top.px_per_mm / kPixelsPerCell);
-  for (cv::Mat* m : {&sums.cosine, &sums.sine, &sums.weight}) {
+  for (cv::Mat* m : {&sums.cosine, &sums.sine, &sums.weight, &sums.square}) {
     cv::boxFilter(*m, *m, -1, {side, side}, {-1, -1}, false, cv::BORDER_CONSTANT);
   }
   return sums;
@@ -194,9 +199,20 @@ double MedianOn(const cv::Mat& values, const cv::Mat& mask) {
   return *middle;
 }
 
+// 255 where the window's mean squared gradient shows a texture, not the file's own noise.
+cv::Mat Textured(const Directions& sums, const cv::Mat& judged, double px_per_mm,
+                 const TornAreaOptions& options) {
+  // Gradients are differences over two pixels.
+  const double least = std::pow(2 * options.min_gradient_per_mm / px_per_mm, 2);
+  const int side = OddCells(options.window_mm * px_per_mm / kPixelsPerCell);
+  cv::Mat count;
+  cv::boxFilter(sums.count, count, -1, {side, side}, {-1, -1}, false, cv::BORDER_CONSTANT);
+  return (sums.square >= least * count) & judged;
+}
+
 // `wide` is the alignment over a wider window: a few cells without lines come by chance.
 cv::Mat MarkTorn(const Alignment& alignment, const cv::Mat& wide, const cv::Mat& judged,
-                 double median, const TornAreaOptions& options) {
+                 const cv::Mat& textured, double median, const TornAreaOptions& options) {
   // |direction| > turn is cos(2 direction) < cos(2 turn), of a vector of enough length.
   const auto cosine =
       static_cast<float>(std::cos(2 * options.min_turn_deg * std::numbers::pi / 180));
@@ -209,10 +225,11 @@ cv::Mat MarkTorn(const Alignment& alignment, const cv::Mat& wide, const cv::Mat&
     const auto* across = alignment.across.ptr<float>(y);
     const auto* around = wide.ptr<float>(y);
     const auto* on = judged.ptr<std::uint8_t>(y);
+    const auto* shows = textured.ptr<std::uint8_t>(y);
     auto* out = torn.ptr<std::uint8_t>(y);
     for (int x = 0; x < torn.cols; ++x) {
       const float length = std::sqrt(along[x] * along[x] + across[x] * across[x]);
-      const bool turned = length > least && along[x] < cosine * length;
+      const bool turned = shows[x] != 0 && length > least && along[x] < cosine * length;
       out[x] = on[x] != 0 && (turned || around[x] < lost) ? 255 : 0;
     }
   }
@@ -234,6 +251,7 @@ void TornAreaOptions::Check() const {
   Need(lost_share >= 0 && lost_share < 1, "lost_share", lost_share, "from 0 to less than 1");
   Need(clear_alignment > 0 && clear_alignment < 1, "clear_alignment", clear_alignment,
        "between 0 and 1");
+  Need(min_gradient_per_mm >= 0, "min_gradient_per_mm", min_gradient_per_mm, "0 or more");
   Need(min_width_mm > 0, "min_width_mm", min_width_mm, "more than 0");
 }
 
@@ -250,11 +268,14 @@ TornArea FindTornArea(const Patch& patch, std::optional<double> lay_deg,
   cv::resize(top.regions, area.field, judged.size(), 0, 0, cv::INTER_NEAREST);
   area.field = area.field == static_cast<int>(Region::kField);
   const Alignment alignment = AlignWith(ExpectedAngle(lay_deg, sums, judged), sums);
-  const double median = MedianOn(alignment.along, area.field);
+  const cv::Mat textured = Textured(sums, judged, top.px_per_mm, options);
+  // Where no texture shows, its directions are chance: none can be lost.
+  const bool shows = 2 * cv::countNonZero(textured & area.field) > cv::countNonZero(area.field);
+  const double median = shows ? MedianOn(alignment.along, area.field) : 0;
   const cv::Mat wide =
       Widen(alignment.along, judged, OddCells(options.window_mm * area.cells_per_mm));
-  cv::morphologyEx(MarkTorn(alignment, wide, judged, median, options), area.torn, cv::MORPH_OPEN,
-                   Disk(options.min_width_mm / 2 * area.cells_per_mm), {-1, -1}, 1,
+  cv::morphologyEx(MarkTorn(alignment, wide, judged, textured, median, options), area.torn,
+                   cv::MORPH_OPEN, Disk(options.min_width_mm / 2 * area.cells_per_mm), {-1, -1}, 1,
                    cv::BORDER_CONSTANT, cv::Scalar::all(0));
   const int field_cells = cv::countNonZero(area.field);
   if (field_cells > 0) {

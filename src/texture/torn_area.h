@@ -15,6 +15,9 @@ struct TornAreaOptions {
   // window; judged only where that median itself is clear.
   double lost_share = 0.2;
   double clear_alignment = 0.5;
+  // Root mean square, of relative reflectance smoothed to the lines: fainter textures (of an ironed
+  // top, of coarse JPEG blocks) show no direction of their own. Torn areas have 0.2 and more.
+  double min_gradient_per_mm = 0.06;
   double min_width_mm = 2.6;  // narrower areas are scars, blobs or chance
   void Check() const;         // throws BadOption: field, value, rule
 };

@@ -6,6 +6,7 @@
 #include <limits>
 #include <numbers>
 #include <opencv2/imgproc.hpp>
+#include <optional>
 
 #include "base/error.h"
 #include "support/draw_defects.h"
@@ -99,6 +100,27 @@ TEST(TornArea, NoneWhereNoLinesAreAnywhere) {
     const Patch patch = RenderLines(ironed);
     EXPECT_EQ(FindTornArea(patch, std::nullopt).area_pct, 0) << seed;
     EXPECT_EQ(FindTornArea(patch, 45.0).area_pct, 0) << seed;
+  }
+}
+
+// Coarse JPEG blocks and marks of ironing have directions, but nearly no gradient.
+TEST(TornArea, FaintTexturesAreNotTorn) {
+  LinesToRender faint = GoodLines(1);
+  faint.first = 0.01;
+  faint.second = 0;
+  faint.noise_sd = 0.001;
+  LinesToRender turned = faint;
+  turned.lay_deg = 135;
+  for (const std::optional<double> lay_deg : {std::optional(45.0), std::optional<double>()}) {
+    Patch patch = RenderLines(faint);
+    ReplaceDisk({2, 5}, 6, RenderLines(turned), patch);
+    EXPECT_EQ(FindTornArea(patch, lay_deg).area_pct, 0);
+    // The same turn of a texture that is seen is an area of 36 pi mm2.
+    faint.first = turned.first = 0.1;
+    patch = RenderLines(faint);
+    ReplaceDisk({2, 5}, 6, RenderLines(turned), patch);
+    EXPECT_TRUE(FindTornArea(patch, lay_deg).Failed());
+    faint.first = turned.first = 0.01;
   }
 }
 
