@@ -5,11 +5,11 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
-#include <limits>
 #include <stdexcept>
 
 #include "base/error.h"
 #include "base/statistics.h"
+#include "texture/form.h"
 
 namespace laygauge {
 namespace {
@@ -69,13 +69,26 @@ void Add(CooccurrenceMatrix& sum, const CooccurrenceMatrix& part) {
 constexpr int kFeatures = 6;
 using Values = std::array<double, kFeatures>;
 
-// NaN: not measurable.
 Values ToValues(const CooccurrenceFeatures& f) {
-  // Levels that scatter by less than half a level correlate by where the scale's steps lie.
-  constexpr double kLeastVariance = 0.25;
-  const double correlation =
-      f.variance >= kLeastVariance ? f.correlation : std::numeric_limits<double>::quiet_NaN();
-  return {f.contrast, f.dissimilarity, f.homogeneity, f.asm_, f.entropy, correlation};
+  return {f.contrast, f.dissimilarity, f.homogeneity, f.asm_, f.entropy, f.correlation};
+}
+
+// Across over along. Of correlations, which are 0 on a smooth top and may be negative, the ratio of
+// 1 + correlation: that of the paper's sum variances, f7.
+Values Ratios(const Values& across, const Values& along) {
+  Values ratios{};
+  for (int f = 0; f < kFeatures; ++f) {
+    const double shift = f == kFeatures - 1 ? 1 : 0;
+    ratios[f] = (across[f] + shift) / (along[f] + shift);
+  }
+  return ratios;
+}
+
+// Weight of the quadratic B-spline at a distance, in levels.
+double SplineWeight(double distance) {
+  const double d = std::abs(distance);
+  if (d >= 1.5) return 0;
+  return d < 0.5 ? 0.75 - d * d : 0.5 * (1.5 - d) * (1.5 - d);
 }
 
 // Features of the whole and, for their standard deviations, of stripes of rows.
@@ -84,35 +97,50 @@ struct Direction {
   std::vector<Values> parts;
 };
 
-Direction MeasureDirection(const cv::Mat& marked, int levels, int down, int right) {
+Direction MeasureDirection(const cv::Mat& marked, const CooccurrenceOptions& options, int down,
+                           int right) {
   constexpr int kStripes = 6;
   constexpr double kLeastPairs = 2000;
-  CooccurrenceMatrix sum{levels, std::vector<double>(levels * levels, 0), 0};
+  const int steps = options.Steps();
+  CooccurrenceMatrix sum{steps, std::vector<double>(steps * steps, 0), 0};
+  const auto describe = [&](const CooccurrenceMatrix& matrix) {
+    return ToValues(DescribeCooccurrence(ShareAmongLevels(matrix, options.steps_per_level)));
+  };
   Direction direction;
   for (int s = 0; s < kStripes; ++s) {
     const CooccurrenceMatrix part = CountRows(
-        marked, levels, down, right, marked.rows * s / kStripes, marked.rows * (s + 1) / kStripes);
+        marked, steps, down, right, marked.rows * s / kStripes, marked.rows * (s + 1) / kStripes);
     Add(sum, part);
     if (part.pairs >= kLeastPairs) {
-      direction.parts.push_back(ToValues(DescribeCooccurrence(part)));
+      direction.parts.push_back(describe(part));
     }
   }
   if (sum.pairs > 0) {
-    direction.whole = ToValues(DescribeCooccurrence(sum));
+    direction.whole = describe(sum);
   }
   return direction;
 }
 
-// Value and standard deviation of its mean over the stripes that have one.
-Feature WithSd(double value, std::vector<double> parts) {
-  if (!std::isfinite(value)) {
-    return {std::nullopt, std::nullopt, "the field is all but one gray level"};
-  }
-  std::erase_if(parts, [](double part) { return !std::isfinite(part); });
+// Value of one feature and standard deviation of its mean over the stripes.
+Feature WithSd(const Values& whole, const std::vector<Values>& parts, int feature) {
   if (parts.size() < 2) {
-    return {value, std::nullopt, ""};
+    return {whole[feature], std::nullopt, ""};
   }
-  return {value, StandardDeviation(parts) / std::sqrt(static_cast<double>(parts.size())), ""};
+  std::vector<double> values;
+  for (const Values& part : parts) {
+    values.push_back(part[feature]);
+  }
+  return {whole[feature], StandardDeviation(values) / std::sqrt(static_cast<double>(values.size())),
+          ""};
+}
+
+// The field without its form, which would lead a smooth top from level to level.
+cv::Mat LevelledField(const AlignedField& field, const cv::Mat& mask) {
+  constexpr int kEveryPixel = 4;  // of either axis: the form has six coefficients
+  cv::Mat levelled = field.relative.clone();
+  RemoveForm(levelled, mask, kEveryPixel);
+  levelled += 1;
+  return levelled;
 }
 
 Finding Measure(const Surface& surface) {
@@ -125,22 +153,19 @@ Finding Measure(const Surface& surface) {
     return {std::vector<Feature>(3 * kFeatures, none), {}};
   }
   const cv::Mat marked =
-      MarkOutside(QuantiseRelative(field.relative, options), mask, options.levels);
-  const Direction along = MeasureDirection(marked, options.levels, 0, offset);
-  const Direction across = MeasureDirection(marked, options.levels, offset, 0);
+      MarkOutside(QuantiseRelative(LevelledField(field, mask), options), mask, options.Steps());
+  const Direction along = MeasureDirection(marked, options, 0, offset);
+  const Direction across = MeasureDirection(marked, options, offset, 0);
+  const Values ratios = Ratios(across.whole, along.whole);
+  std::vector<Values> ratio_parts;
+  for (std::size_t s = 0; s < std::min(along.parts.size(), across.parts.size()); ++s) {
+    ratio_parts.push_back(Ratios(across.parts[s], along.parts[s]));
+  }
   Finding finding;
   for (int f = 0; f < kFeatures; ++f) {
-    std::vector<double> of_along;
-    std::vector<double> of_across;
-    std::vector<double> ratios;
-    for (std::size_t s = 0; s < std::min(along.parts.size(), across.parts.size()); ++s) {
-      of_along.push_back(along.parts[s][f]);
-      of_across.push_back(across.parts[s][f]);
-      ratios.push_back(of_across.back() / of_along.back());
-    }
-    finding.features.push_back(WithSd(along.whole[f], of_along));
-    finding.features.push_back(WithSd(across.whole[f], of_across));
-    finding.features.push_back(WithSd(across.whole[f] / along.whole[f], ratios));
+    finding.features.push_back(WithSd(along.whole, along.parts, f));
+    finding.features.push_back(WithSd(across.whole, across.parts, f));
+    finding.features.push_back(WithSd(ratios, ratio_parts, f));
   }
   return finding;
 }
@@ -148,11 +173,18 @@ Finding Measure(const Surface& surface) {
 }  // namespace
 
 void CooccurrenceOptions::Check() const {
-  if (!(low < high)) {
-    throw BadOption(fmt::format("low is {}: it must be below high, {}", low, high));
+  if (!(level_width > 0)) {
+    throw BadOption(fmt::format("level_width is {}: it must be above 0", level_width));
   }
-  if (levels < 2 || levels > kMaxLevels) {
-    throw BadOption(fmt::format("levels is {}: it must be within 2..{}", levels, kMaxLevels));
+  if (steps_per_level < 1 || steps_per_level % 2 == 0) {
+    throw BadOption(
+        fmt::format("steps_per_level is {}: it must be odd and above 0", steps_per_level));
+  }
+  if (levels_each_side < 1 || Steps() > kMaxLevels) {
+    throw BadOption(
+        fmt::format("levels_each_side is {}: it must be 1 at least, and make {} steps "
+                    "at most, not {}",
+                    levels_each_side, kMaxLevels, Steps()));
   }
   if (!(offset_mm > 0)) {
     throw BadOption(fmt::format("offset_mm is {}: it must be above 0", offset_mm));
@@ -166,6 +198,36 @@ CooccurrenceMatrix CountCooccurrence(const cv::Mat& levels_image, const cv::Mat&
   }
   return CountRows(MarkOutside(levels_image, mask, levels), levels, down, right, 0,
                    levels_image.rows);
+}
+
+CooccurrenceMatrix ShareAmongLevels(const CooccurrenceMatrix& matrix, int steps) {
+  if (steps < 1 || matrix.levels % steps != 0) {
+    throw std::invalid_argument("ShareAmongLevels: the levels must be a multiple of the steps");
+  }
+  constexpr int kShares = 3;  // levels under the window of one gray value
+  const int levels = matrix.levels / steps + kShares - 1;
+  std::vector<std::array<double, kShares>> weights(steps);  // of a step within its level
+  for (int step = 0; step < steps; ++step) {
+    for (int share = 0; share < kShares; ++share) {
+      weights[step][share] = SplineWeight((step + 0.5) / steps + 0.5 - share);
+    }
+  }
+  CooccurrenceMatrix shared{levels, std::vector<double>(levels * levels, 0), matrix.pairs};
+  for (int i = 0; i < matrix.levels; ++i) {
+    for (int j = 0; j < matrix.levels; ++j) {
+      const double count = matrix.counts[i * matrix.levels + j];
+      if (count == 0) {
+        continue;
+      }
+      for (int a = 0; a < kShares; ++a) {
+        for (int b = 0; b < kShares; ++b) {
+          shared.counts[(i / steps + a) * levels + j / steps + b] +=
+              count * weights[i % steps][a] * weights[j % steps][b];
+        }
+      }
+    }
+  }
+  return shared;
 }
 
 CooccurrenceFeatures DescribeCooccurrence(const CooccurrenceMatrix& matrix) {
@@ -200,16 +262,16 @@ CooccurrenceFeatures DescribeCooccurrence(const CooccurrenceMatrix& matrix) {
 
 cv::Mat QuantiseRelative(const cv::Mat& relative, const CooccurrenceOptions& options) {
   options.Check();
-  const double scale = options.levels / (options.high - options.low);
+  const double scale = options.steps_per_level / options.level_width;
   cv::Mat quantised;
-  // convertTo rounds and saturates at 0; half a level less makes it the floor.
-  relative.convertTo(quantised, CV_8UC1, scale, -options.low * scale - 0.5);
-  return cv::min(quantised, options.levels - 1);
+  // convertTo rounds and saturates at 0: the coupon's own level becomes the middle step.
+  relative.convertTo(quantised, CV_8UC1, scale, (options.Steps() - 1) / 2 - scale);
+  return cv::min(quantised, options.Steps() - 1);
 }
 
 Metric CooccurrenceMetric() {
   return {"cooccurrence",
-          1,
+          2,
           {{"cooccurrence_contrast_along", "mean squared difference of gray levels 0.2 mm along"},
            {"cooccurrence_contrast_across", "the same across the lay"},
            {"cooccurrence_contrast_ratio", "across over along"},
@@ -227,7 +289,7 @@ Metric CooccurrenceMetric() {
            {"cooccurrence_entropy_ratio", "across over along"},
            {"cooccurrence_correlation_along", "correlation of gray levels 0.2 mm along"},
            {"cooccurrence_correlation_across", "the same across the lay"},
-           {"cooccurrence_correlation_ratio", "across over along"}},
+           {"cooccurrence_correlation_ratio", "1 + that across over 1 + that along"}},
           &Measure};
 }
 

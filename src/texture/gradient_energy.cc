@@ -20,8 +20,11 @@ struct Tensor {
   double yy = 0;
   double xy = 0;
 
-  // Doubled angle and anisotropic energy of the gradient as one complex number.
-  [[nodiscard]] std::complex<double> Doubled() const { return {xx - yy, 2 * xy}; }
+  // Doubled angle and coherence of the gradient as one complex number.
+  [[nodiscard]] std::complex<double> Directed(double floor) const {
+    const double energy = xx + yy + floor;
+    return energy > 0 ? std::complex<double>(xx - yy, 2 * xy) / energy : 0;
+  }
 };
 
 // Sums of products of Sobel derivatives over `width` pixels of one row.
@@ -111,6 +114,9 @@ void GradientEnergyOptions::Check() const {
   if (!(cell_mm > 0)) {
     throw BadOption(fmt::format("cell_mm is {}: it must be above 0", cell_mm));
   }
+  if (!(floor_per_mm2 >= 0)) {
+    throw BadOption(fmt::format("floor_per_mm2 is {}: it must be 0 at least", floor_per_mm2));
+  }
 }
 
 std::optional<GradientEnergy> MeasureGradientEnergy(const cv::Mat& image, const cv::Mat& mask,
@@ -130,18 +136,17 @@ std::optional<GradientEnergy> MeasureGradientEnergy(const cv::Mat& image, const 
   for (const Tensor& cell : cells) {
     xx.push_back(cell.xx);
     yy.push_back(cell.yy);
-    const double energy = cell.xx + cell.yy;
-    coherences.push_back(energy > 0 ? std::abs(cell.Doubled()) / energy : 0);
-    sum += cell.Doubled();
-    sum_abs += std::abs(cell.Doubled());
+    const std::complex<double> directed = cell.Directed(options.floor_per_mm2);
+    coherences.push_back(std::abs(directed));
+    sum += directed;
+    sum_abs += coherences.back();
   }
-  const double energy = Mean(xx) + Mean(yy);
   GradientEnergy result;
   result.along = Mean(xx);
   result.across = Mean(yy);
   result.along_sd = StandardError(xx);
   result.across_sd = StandardError(yy);
-  result.coherence = energy > 0 ? std::abs(sum) / static_cast<double>(cells.size()) / energy : 0;
+  result.coherence = std::abs(sum) / static_cast<double>(cells.size());
   result.coherence_sd = StandardError(coherences);
   result.orientation_deg = 0.5 * std::arg(sum) * 180 / std::numbers::pi;
   result.orientation_spread_deg = sum_abs > 0 ? SpreadOf(std::abs(sum) / sum_abs) : 0;
@@ -153,10 +158,10 @@ std::optional<GradientEnergy> MeasureGradientEnergy(const cv::Mat& image, const 
 
 Metric GradientEnergyMetric() {
   return {"gradient_energy",
-          1,
+          2,
           {{"gradient_energy_along_per_mm2", "mean squared slope of reflectance along the lay"},
            {"gradient_energy_across_per_mm2", "mean squared slope of reflectance across the lay"},
-           {"gradient_coherence", "share of the slopes in one direction, 0 to 1"},
+           {"gradient_coherence", "how far the slopes of all parts share one direction, 0 to 1"},
            {"orientation_spread_deg", "deviation of the local direction of the texture"}},
           &Measure};
 }

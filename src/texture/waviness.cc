@@ -2,13 +2,13 @@
 
 #include <fmt/format.h>
 
-#include <Eigen/Dense>
 #include <algorithm>
 #include <cmath>
 #include <numbers>
 #include <opencv2/imgproc.hpp>
 
 #include "base/statistics.h"
+#include "texture/form.h"
 
 namespace laygauge {
 namespace {
@@ -57,32 +57,6 @@ CellField AverageCells(const Patch& patch, double cell_mm) {
   return cells;
 }
 
-// Takes the best polynomial of second order off the cells' values (weighted least squares).
-void RemoveForm(CellField& cells) {
-  using Row = Eigen::Matrix<double, 6, 1>;
-  const auto basis = [&](int x, int y) {
-    const double u = 2.0 * x / cells.values.cols - 1;
-    const double v = 2.0 * y / cells.values.rows - 1;
-    return Row{1, u, v, u * u, u * v, v * v};
-  };
-  Eigen::Matrix<double, 6, 6> normal = Eigen::Matrix<double, 6, 6>::Zero();
-  Row right = Row::Zero();
-  for (int y = 0; y < cells.values.rows; ++y) {
-    for (int x = 0; x < cells.values.cols; ++x) {
-      const double weight = cells.weights.at<float>(y, x);
-      const Row row = basis(x, y);
-      normal += weight * row * row.transpose();
-      right += weight * cells.values.at<float>(y, x) * row;
-    }
-  }
-  const Row form = normal.ldlt().solve(right);
-  for (int y = 0; y < cells.values.rows; ++y) {
-    for (int x = 0; x < cells.values.cols; ++x) {
-      cells.values.at<float>(y, x) -= static_cast<float>(basis(x, y).dot(form));
-    }
-  }
-}
-
 // Weighted Gaussian mean with the cut-off wavelength `cutoff_mm`.
 cv::Mat LowPass(const CellField& cells, double cutoff_mm) {
   // exp(-pi (r / (a c))^2) has the standard deviation a c / sqrt(2 pi) = c sqrt(ln 2 / 2) / pi; the
@@ -129,7 +103,7 @@ Expected<Waviness> MeasureWaviness(const Patch& patch, const WavinessOptions& op
     return Unmeasurable(fmt::format("the field is {:.1f} mm wide: waviness needs {} mm",
                                     cells.width_mm, options.max_wavelength_mm));
   }
-  RemoveForm(cells);
+  RemoveForm(cells.values, cells.weights);
   const cv::Mat band =
       LowPass(cells, options.min_wavelength_mm) - LowPass(cells, options.max_wavelength_mm);
   constexpr int kParts = 3;

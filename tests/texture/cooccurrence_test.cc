@@ -7,6 +7,7 @@
 #include <fstream>
 #include <map>
 #include <numbers>
+#include <opencv2/imgproc.hpp>
 #include <random>
 #include <sstream>
 
@@ -106,7 +107,8 @@ TEST(Cooccurrence, MaskedPhantomConsensus) {
   EXPECT_NEAR(mean.correlation, -0.0121, 0.00005);
 }
 
-// scikit-image on its own photographs, the same levels: nothing but the order of sums differs.
+// scikit-image on its own photographs, the same levels: nothing but the order of sums differs. A
+// shift of 0: shared among levels, by SciPy's B-spline.
 TEST(Cooccurrence, AgreesWithScikitImageOnPhotographs) {
   const std::string raw = (TestDirectory() / "photo").string();
   std::istringstream lines(RunReference("cooccurrence_reference.py", {raw}));
@@ -125,18 +127,20 @@ TEST(Cooccurrence, AgreesWithScikitImageOnPhotographs) {
       std::ifstream(raw + "-" + photo, std::ios::binary)
           .read(image.ptr<char>(), static_cast<std::streamsize>(image.total()));
     }
-    const int levels = 256 >> shift;
+    const int levels = shift == 0 ? 85 : 256 >> shift;
     cv::Mat quantised(image.size(), CV_8UC1);
-    std::transform(
-        image.begin<std::uint8_t>(), image.end<std::uint8_t>(), quantised.begin<std::uint8_t>(),
-        [shift = shift](std::uint8_t v) { return static_cast<std::uint8_t>(v >> shift); });
+    std::transform(image.begin<std::uint8_t>(), image.end<std::uint8_t>(),
+                   quantised.begin<std::uint8_t>(),
+                   [&](std::uint8_t v) { return static_cast<std::uint8_t>(v * levels / 256); });
     // Its angle pi/4 is one row down, one column right; offsets are rounded, so that distance 2
     // becomes 1 row and 1 column, distance 5 becomes 4 and 4.
     const double turn = angle * kPi / 4;
     const int down = static_cast<int>(std::lround(distance * std::sin(turn)));
     const int right = static_cast<int>(std::lround(distance * std::cos(turn)));
-    const CooccurrenceFeatures f = DescribeCooccurrence(CountCooccurrence(
-        quantised, cv::Mat(image.size(), CV_8UC1, cv::Scalar(1)), levels, down, right));
+    const CooccurrenceMatrix counted = CountCooccurrence(
+        quantised, cv::Mat(image.size(), CV_8UC1, cv::Scalar(1)), levels, down, right);
+    const CooccurrenceFeatures f =
+        DescribeCooccurrence(shift == 0 ? ShareAmongLevels(counted, 5) : counted);
     EXPECT_NEAR(f.contrast, want[0], 1e-9) << photo << shift << distance << angle;
     EXPECT_NEAR(f.dissimilarity, want[1], 1e-9);
     EXPECT_NEAR(f.homogeneity, want[2], 1e-9);
@@ -147,7 +151,7 @@ TEST(Cooccurrence, AgreesWithScikitImageOnPhotographs) {
   if (cases == 0) {
     GTEST_SKIP() << "Python's scikit-image is not installed";
   }
-  EXPECT_EQ(cases, 2 * 2 * 3 * 4);
+  EXPECT_EQ(cases, 2 * 3 * 3 * 4);
 }
 
 // Closed forms: independent uniform levels have the contrast (L^2 - 1) / 6, the dissimilarity
@@ -178,25 +182,66 @@ TEST(Cooccurrence, ConstantImageAndNoPairs) {
   EXPECT_THROW((void)Count(constant, 256, 0, 1), std::invalid_argument);
 }
 
-// The coupon's own level lies in the middle of a level; ends saturate.
+// The B-spline's closed forms (Unser 1999, table of moments: mean exact, second moment 1/4): shared
+// counts have the steps' mean, variance + 1/4, contrast + 1/2 and covariance, in levels, wherever
+// the steps lie.
+TEST(ShareAmongLevels, KeepsMomentsButForTheWindow) {
+  std::mt19937 random(11);
+  std::uniform_int_distribution<int> step(0, 34);
+  Masked image{cv::Mat(60, 60, CV_8UC1), cv::Mat(60, 60, CV_8UC1, cv::Scalar(1))};
+  std::generate(image.levels.begin<std::uint8_t>(), image.levels.end<std::uint8_t>(),
+                [&] { return static_cast<std::uint8_t>(step(random)); });
+  cv::blur(image.levels, image.levels, {3, 3});  // neighbours alike: the correlation is not 0
+  const CooccurrenceMatrix steps = Count(image, 35, 0, 1);
+  const CooccurrenceFeatures fine = DescribeCooccurrence(steps);
+  const CooccurrenceMatrix shared = ShareAmongLevels(steps, 5);
+  const CooccurrenceFeatures f = DescribeCooccurrence(shared);
+  EXPECT_EQ(shared.levels, 9);
+  EXPECT_EQ(shared.pairs, steps.pairs);
+  EXPECT_NEAR(f.contrast, fine.contrast / 25 + 0.5, 1e-12);
+  EXPECT_NEAR(f.variance, fine.variance / 25 + 0.25, 1e-12);
+  EXPECT_NEAR(f.correlation * f.variance, fine.correlation * fine.variance / 25, 1e-12);
+  EXPECT_THROW((void)ShareAmongLevels(steps, 4), std::invalid_argument);
+}
+
+// One gray value in the middle of a level: shares 1/8, 3/4, 1/8 on either side of a pair.
+TEST(ShareAmongLevels, OneGrayValueInClosedForm) {
+  const Masked constant = Image(2, 3, {7, 7, 7, 7, 7, 7});
+  const CooccurrenceFeatures f =
+      DescribeCooccurrence(ShareAmongLevels(Count(constant, 15, 0, 1), 5));
+  const double outer = 0.125;
+  const double inner = 0.75;
+  EXPECT_NEAR(f.contrast, 0.5, 1e-12);
+  EXPECT_NEAR(f.dissimilarity, 4 * outer * inner + 4 * outer * outer, 1e-12);
+  EXPECT_NEAR(f.homogeneity,
+              2 * outer * outer + inner * inner + 2 * outer * inner + 2 * outer * outer / 5, 1e-12);
+  EXPECT_NEAR(f.asm_, std::pow(2 * outer * outer + inner * inner, 2), 1e-12);
+  EXPECT_NEAR(f.entropy, -2 * (2 * outer * std::log2(outer) + inner * std::log2(inner)), 1e-12);
+  EXPECT_NEAR(f.correlation, 0, 1e-12);
+}
+
+// The coupon's own level lies in the middle of a step; ends saturate.
 TEST(QuantiseRelative, FixedScale) {
   const cv::Mat relative =
-      (cv::Mat_<float>(1, 8) << 0.976F, 1.0F, 1.024F, 1.026F, 0.974F, -1.0F, 0.18F, 9.0F);
+      (cv::Mat_<float>(1, 8) << 0.991F, 1.0F, 1.009F, 1.011F, 0.989F, -1.0F, 0.16F, 9.0F);
   const cv::Mat levels = QuantiseRelative(relative, {});
-  const std::vector<int> want{16, 16, 16, 17, 15, 0, 0, 28};
+  const std::vector<int> want{42, 42, 42, 43, 41, 0, 0, 84};
   for (int i = 0; i < 8; ++i) {
     EXPECT_EQ(levels.at<std::uint8_t>(0, i), want[i]) << i;
   }
-  EXPECT_THROW((CooccurrenceOptions{.low = 2, .high = 1}.Check()), BadOption);
-  EXPECT_THROW((CooccurrenceOptions{.levels = 1}.Check()), BadOption);
+  EXPECT_THROW((CooccurrenceOptions{.level_width = 0}.Check()), BadOption);
+  EXPECT_THROW((CooccurrenceOptions{.levels_each_side = 0}.Check()), BadOption);
+  EXPECT_THROW((CooccurrenceOptions{.levels_each_side = 30}.Check()), BadOption);
+  EXPECT_THROW((CooccurrenceOptions{.steps_per_level = 4}.Check()), BadOption);
   EXPECT_THROW((CooccurrenceOptions{.offset_mm = 0}.Check()), BadOption);
   EXPECT_NO_THROW(CooccurrenceOptions().Check());
 }
 
 // A grating A cos(2 pi v / p) at the offset d across: differences have the mean square
-// 2 A^2 sin^2(pi d / p); along they are 0. The mean over 2 x 2 pixels of 0.05 mm dims the amplitude
-// by cos(pi 0.05 / p). Rounding to levels adds 1/6 at most (two independent uniform errors) to
-// either, bicubic interpolation 2.7 % of the amplitude, 5.4 % of its square.
+// 2 A^2 sin^2(pi d / p); along they are 0; the window adds 1/2 to either. The mean over 2 x 2
+// pixels of 0.05 mm dims the amplitude by cos(pi 0.05 / p). Rounding to steps of a fifth of a level
+// adds 1/6 of 1/25 at most (two independent uniform errors), bicubic interpolation takes 2.7 % of
+// the amplitude, 5.4 % of its square.
 TEST(CooccurrenceMetric, GratingAlongAndAcross) {
   const double pitch = 0.47;
   const Patch patch = RenderLines({.pitch_mm = pitch, .lay_deg = 30, .first = 0.3});
@@ -204,10 +249,43 @@ TEST(CooccurrenceMetric, GratingAlongAndAcross) {
   const Metric metric = CooccurrenceMetric();
   const Finding finding = metric.measure(MakeSurface(patch, coupon));
   ASSERT_EQ(finding.features.size(), metric.features.size());
-  const double amplitude = 0.3 / 0.05 * std::cos(kPi * 0.05 / pitch);
+  const double amplitude = 0.3 / 0.1 * std::cos(kPi * 0.05 / pitch);
   const double want = 2 * std::pow(amplitude * std::sin(kPi * 0.2 / pitch), 2);
-  EXPECT_LT(*finding.features[0].value, 1.0 / 6 + 0.01 * want);
-  EXPECT_NEAR(*finding.features[1].value, want, 0.054 * want + 1.0 / 6);
+  EXPECT_NEAR(*finding.features[0].value, 0.5, 1.0 / 150 + 0.01 * want);
+  EXPECT_NEAR(*finding.features[1].value, want + 0.5, 0.054 * want + 1.0 / 150);
+  EXPECT_NEAR(*finding.features[2].value, *finding.features[1].value / *finding.features[0].value,
+              1e-12);
+  // Of correlations: over 1 + each. Along, the grating repeats: v / (v + 1/4).
+  const double along = *finding.features[15].value;
+  const double across = *finding.features[16].value;
+  const double variance = amplitude * amplitude / 2;
+  EXPECT_NEAR(along, variance / (variance + 0.25), 0.01);
+  EXPECT_NEAR(*finding.features[17].value, (1 + across) / (1 + along), 1e-12);
+}
+
+// A smooth top: no value is empty, and the window's own values (above) are all that is left. Noise
+// of 0.8 and 1.6 % of a pixel is half that on pixels of 0.1 mm, 0.08 of a level's width: it adds
+// 2 * 0.08^2 = 0.013 to the contrast and 0.03 to an entropy (log2 of (1/4 + 0.08^2) / (1/4) for two
+// normal variables). A slope of the light, 6 % over the coupon, is form.
+TEST(CooccurrenceMetric, SmoothTopTendsToTheWindow) {
+  const CouponDescription coupon = SquareCoupon();
+  for (const double noise : {0.008, 0.016}) {
+    Patch patch = RenderLines({.first = 0, .noise_sd = noise});
+    for (int y = 0; y < patch.relative.rows; ++y) {
+      for (int x = 0; x < patch.relative.cols; ++x) {
+        patch.relative.at<float>(y, x) += static_cast<float>(0.06 * (x - patch.origin_px.x) / 800);
+      }
+    }
+    const Finding finding = CooccurrenceMetric().measure(MakeSurface(patch, coupon));
+    const std::vector<double> want{0.5, 0.4375, 0.78, 0.3525, 2.1226, 0};
+    for (std::size_t f = 0; f < want.size(); ++f) {
+      for (const std::size_t direction : {0, 1}) {
+        ASSERT_TRUE(finding.features[3 * f + direction].value.has_value()) << f;
+        EXPECT_NEAR(*finding.features[3 * f + direction].value, want[f], 0.05) << f;
+      }
+      EXPECT_NEAR(*finding.features[3 * f + 2].value, 1, 0.02) << f;
+    }
+  }
 }
 
 // Pixels off the field may hold anything.

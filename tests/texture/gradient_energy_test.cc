@@ -42,7 +42,8 @@ TEST(GradientEnergy, RampHasItsSlope) {
   ASSERT_TRUE(energy.has_value());
   EXPECT_NEAR(energy->along, 0.1 * 0.1, 1e-6);
   EXPECT_NEAR(energy->across, 0.02 * 0.02, 1e-6);
-  EXPECT_NEAR(energy->coherence, 1, 1e-5);
+  const double total = 0.1 * 0.1 + 0.02 * 0.02;
+  EXPECT_NEAR(energy->coherence, total / (total + 0.01), 1e-5);  // one direction over the floor
   EXPECT_NEAR(energy->orientation_deg, std::atan2(0.02, 0.1) * 180 / kPi, 1e-3);
 }
 
@@ -51,7 +52,8 @@ TEST(GradientEnergy, RampHasItsSlope) {
 TEST(GradientEnergy, GratingInClosedForm) {
   for (const double period : {4.0, 8.0, 12.0}) {
     const cv::Mat image = Grating(period, 0, 0.2);
-    const auto energy = MeasureGradientEnergy(image, Everywhere(image), 20, {.cell_mm = 1.2});
+    const auto energy =
+        MeasureGradientEnergy(image, Everywhere(image), 20, {.cell_mm = 1.2, .floor_per_mm2 = 0});
     ASSERT_TRUE(energy.has_value());
     const double want = 32 * 0.04 * std::pow(std::sin(2 * kPi / period), 2) / 64 * 20 * 20;
     EXPECT_NEAR(energy->along, want, 1e-4 * want) << period;  // cells of 24 px: whole periods
@@ -100,6 +102,29 @@ TEST(GradientEnergy, SpreadOfTwoHalves) {
   EXPECT_NEAR(energy->orientation_spread_deg, want, 0.4);
 }
 
+// A photo's noise has some direction by chance or by its coding; a top that holds no more is not
+// called directed. Horizontal stripes with an energy of a hundredth of the floor: 0.01 / 1.01.
+TEST(GradientEnergy, CoherenceSinksToZeroWithTheTexture) {
+  const double amplitude =
+      std::sqrt(0.01 * 0.01 * 64 / (32 * 100 * std::pow(std::sin(kPi / 4), 2)));
+  const cv::Mat faint = Grating(8, 90, amplitude);
+  const auto energy = MeasureGradientEnergy(faint, Everywhere(faint), 10);  // cells of one period
+  EXPECT_NEAR(energy->across, 1e-4, 1e-6);
+  EXPECT_NEAR(energy->coherence, 0.01 / 1.01, 1e-4);
+}
+
+// A steep scar on a fifth of the cells, at right angles to the lines and with a hundred times their
+// energy, counts by its cells: 0.8 of the lines' coherence less 0.2 of its own, nearly 1. Energies
+// together would give (20 - 0.8) / 20.8 for its direction. Half a row of 48 rows of cells: 0.02.
+TEST(GradientEnergy, OneSteepScarDoesNotOutweighTheLines) {
+  cv::Mat image = Grating(8, 90, 0.05);
+  Grating(8, 0, 0.5).rowRange(0, image.rows / 5).copyTo(image.rowRange(0, image.rows / 5));
+  const auto energy = MeasureGradientEnergy(image, Everywhere(image), 10);
+  const double lines = 32 * 0.05 * 0.05 * std::pow(std::sin(kPi / 4), 2) / 64 * 10 * 10;
+  EXPECT_NEAR(energy->coherence, 0.8 * lines / (lines + 0.01) - 0.2, 0.02);
+  EXPECT_NEAR(std::abs(energy->orientation_deg), 90, 1);
+}
+
 TEST(GradientEnergy, OnlyWholeCellsOfTheFieldCount) {
   cv::Mat image = Grating(8, 0, 0.1);
   cv::Mat mask = Everywhere(image);
@@ -110,6 +135,7 @@ TEST(GradientEnergy, OnlyWholeCellsOfTheFieldCount) {
   EXPECT_LT(energy->along, 32 * 0.01 * 400 / 64);
   EXPECT_FALSE(MeasureGradientEnergy(image, cv::Mat::zeros(image.size(), CV_8UC1), 20).has_value());
   EXPECT_THROW(GradientEnergyOptions{.cell_mm = -1}.Check(), BadOption);
+  EXPECT_THROW(GradientEnergyOptions{.floor_per_mm2 = -1}.Check(), BadOption);
 }
 
 }  // namespace

@@ -85,8 +85,6 @@ Why columns go beyond it:
 - Counts move in whole steps: one scar is 1.2 spreads, and a blob that fades by half moves its count.
 - `wall_gap_mm` is 0 where no seam is open and some 0.17 mm where one piece of 1.25 mm is: use
   `wall_gap_mean_mm`, which has no such step.
-- Ratios, moments, entropies and coherence of smooth (ironed) tops divide by nearly nothing; JPEG at
-  quality 80 puts its own blocks there. Contrast and energy across hold still.
 - The second harmonic is finer than 0.25 mm, where coding and sharpness take most; phase agreement
   and scatter say little where ridges hide the lines (one coupon of d5).
 - Other light (d2, d3) shows slopes and ridges differently: light across the lines shows their flanks,
