@@ -86,9 +86,29 @@ CouponRecord MeasureWell(const PhotoStages& stages, const Well& well, std::optio
   return record;
 }
 
+// What is to be noted of the file's coding; empty: nothing.
+Expected<std::string> CheckCoding(const Photo& photo, const MeasurePhotoOptions& options) {
+  if (!photo.jpeg_quality || *photo.jpeg_quality >= options.good_jpeg_quality) return "";
+  if (*photo.jpeg_quality < options.least_jpeg_quality) {
+    return Unmeasurable(fmt::format(
+        "{}: saved as JPEG of quality {:.0f}, which hides fine lines; at least {:.0f} is needed: "
+        "copy the camera's own file, of quality 85 or more",
+        photo.file, *photo.jpeg_quality, options.least_jpeg_quality));
+  }
+  return fmt::format(
+      "{}: saved as JPEG of quality {:.0f}, which weakens fine lines; copy the camera's own file, "
+      "of "
+      "quality 85 or more",
+      photo.file, *photo.jpeg_quality);
+}
+
 }  // namespace
 
 void MeasurePhotoOptions::Check() const {
+  if (!(least_jpeg_quality >= 1 && least_jpeg_quality <= good_jpeg_quality)) {
+    throw BadOption(fmt::format("least_jpeg_quality is {}: from 1 to good_jpeg_quality, {}",
+                                least_jpeg_quality, good_jpeg_quality));
+  }
   light.Check();
   sharpness.Check();
   locate.Check();
@@ -103,6 +123,8 @@ Expected<PhotoMeasurement> MeasurePhoto(const Photo& photo, const SheetDescripti
                                         const CouponRegions& regions,
                                         const MeasurePhotoOptions& options) {
   options.Check();
+  const auto coding_note = CheckCoding(photo, options);
+  if (!coding_note) return tl::unexpected(coding_note.error());
   auto light = EstimateLight(photo, camera.view, sheet, options.light);
   if (!light) return tl::unexpected(light.error());
   auto sharpness = MeasureSharpness(photo, camera.view, sheet, options.sharpness);
@@ -136,6 +158,7 @@ Expected<PhotoMeasurement> MeasurePhoto(const Photo& photo, const SheetDescripti
   record.camera = camera;
   record.px_per_mm = regions.px_per_mm;
   record.notes = camera.notes;
+  if (!coding_note->empty()) record.notes.push_back(*coding_note);
   record.notes.insert(record.notes.end(), light->warnings.begin(), light->warnings.end());
   record.light = std::move(*light);
   record.sharpness = std::move(*sharpness);

@@ -21,6 +21,9 @@ namespace laygauge {
 
 // The options of every stage from the camera to the patch, as one.
 struct MeasurePhotoOptions {
+  // Coarser JPEGs are refused: below, blocks hide and imitate faint lines.
+  double least_jpeg_quality = 50;
+  double good_jpeg_quality = 75;  // coarser ones are noted
   LightOptions light;
   EdgeSharpnessOptions sharpness;
   LocateOptions locate;
@@ -38,7 +41,8 @@ struct PhotoMeasurement {
 // Measures every well of the sheet, on all of OpenCV's threads. A well that cannot be measured is
 // `retake` or `empty` in the record, with its reason. The record's batch, scale and score are left
 // to the caller.
-// Problem: the photo as a whole cannot be measured (too dark, no sharp edge to judge it by, ...).
+// Problem: the photo as a whole cannot be measured (too dark, too coarsely coded, no sharp
+// edge to judge it by, ...).
 [[nodiscard]] Expected<PhotoMeasurement> MeasurePhoto(const Photo& photo,
                                                       const SheetDescription& sheet,
                                                       const CameraEstimate& camera,

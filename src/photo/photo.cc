@@ -10,6 +10,7 @@
 #include "base/file.h"
 #include "photo/camera_tags.h"
 #include "photo/decode.h"
+#include "photo/jpeg_quality.h"
 #include "photo/srgb.h"
 #include "photo/upright.h"
 
@@ -49,6 +50,7 @@ Expected<Photo> ReadPhoto(const std::filesystem::path& path) {
   photo.stem = path.stem().string();
   auto stored = DecodeImage(*bytes, photo.file);
   if (!stored) return tl::unexpected(stored.error());
+  photo.jpeg_quality = JpegQuality(*bytes);
   photo.tags = ReadCameraTags(*bytes);
   photo.encoded = Upright(std::move(*stored), photo.tags.orientation);
   return photo;

@@ -26,6 +26,7 @@ struct Photo {
   std::string file;  // as named by the caller, for messages
   std::string stem;  // the file's name without folder and extension
   cv::Mat encoded;   // CV_8UC1 or CV_16UC1: luma, still encoded by the sRGB curve
+  std::optional<double> jpeg_quality;  // 1 to 100, as JpegQuality tells it; none: another format
   CameraTags tags;
 
   [[nodiscard]] cv::Size size() const { return encoded.size(); }

@@ -12,6 +12,7 @@
 #include "cli/run_with.h"
 #include "photo/photo.h"
 #include "report/png.h"
+#include "support/encode.h"
 
 namespace laygauge {
 namespace {
@@ -82,6 +83,15 @@ TEST_F(ScoreCommandTest, PhotographsThatCannotBeMeasured) {
   cv::resize(D2(), small, {}, 0.5, 0.5, cv::INTER_AREA);  // d2 shows about 17 px/mm
   ExpectRefused({WritePicture("small.png", small)}, "at least 10 are needed");
   ExpectRefused({(Samples() / "d2.jpg").string(), "--sheet", "a4-15"}, "a4-15");
+}
+
+TEST_F(ScoreCommandTest, CoarseJpegsAreRefusedOrNoted) {
+  ExpectRefused({Write("coarse.jpg", support::EncodeJpeg(D2(), {.quality = 40}))},
+                "coarse.jpg: saved as JPEG of quality 40");
+  const auto noted = Write("noted.jpg", support::EncodeJpeg(D2(), {.quality = 65}));
+  const Outcome outcome = RunWith({"score", noted, "--out", In("out"), "--pictures", "none"});
+  EXPECT_EQ(outcome.code, kExitDone) << outcome.err;
+  EXPECT_NE(outcome.err.find("noted.jpg: saved as JPEG of quality 65"), std::string::npos);
 }
 
 TEST_F(ScoreCommandTest, DescriptionsThatAreWrong) {

@@ -5,16 +5,16 @@
 
 #include "photo/camera_tags.h"
 #include "photo/decode.h"
-#include "photo/encode.h"
+#include "support/encode.h"
 
 namespace laygauge {
 namespace {
 
-using testing::EncodeJpeg;
-using testing::EncodePng;
-using testing::EncodeTiff;
-using testing::InApp1;
-using testing::MakeExif;
+using support::EncodeJpeg;
+using support::EncodePng;
+using support::EncodeTiff;
+using support::InApp1;
+using support::MakeExif;
 
 cv::Mat Picture(int type) {
   cv::Mat picture(40, 56, type);

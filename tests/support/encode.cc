@@ -1,4 +1,4 @@
-#include "photo/encode.h"
+#include "support/encode.h"
 
 #include <cstdio>
 #include <cstdlib>
@@ -14,7 +14,7 @@
 #include <fstream>
 #include <sstream>
 
-namespace laygauge::testing {
+namespace laygauge::support {
 namespace {
 
 void Append16(std::string& out, std::uint16_t value) {
@@ -234,4 +234,4 @@ std::string MakeExif(const ExifChoices& choices) {
 
 std::string InApp1(const std::string& exif) { return std::string("Exif\0\0", 6) + exif; }
 
-}  // namespace laygauge::testing
+}  // namespace laygauge::support

@@ -5,8 +5,8 @@
 #include <string>
 #include <vector>
 
-// Small pictures as files in memory, made by the codec libraries, for the tests of this folder.
-namespace laygauge::testing {
+// Small pictures as files in memory, made by the codec libraries, for tests.
+namespace laygauge::support {
 
 struct JpegChoices {
   int quality = 100;
@@ -51,4 +51,4 @@ struct ExifChoices {
 [[nodiscard]] std::string MakeExif(const ExifChoices& choices);
 [[nodiscard]] std::string InApp1(const std::string& exif);  // "Exif\0\0" before it
 
-}  // namespace laygauge::testing
+}  // namespace laygauge::support
