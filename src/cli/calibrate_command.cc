@@ -11,7 +11,7 @@
 #include "grade/calibration_report.h"
 #include "grade/fit_scale.h"
 #include "grade/scale_file.h"
-#include "report/png.h"
+#include "report/encode_png.h"
 #include "texture/metric.h"
 
 namespace laygauge {

@@ -12,8 +12,8 @@
 #include "base/file.h"
 #include "cli/inputs.h"
 #include "grade/suggest.h"
+#include "report/encode_png.h"
 #include "report/grading_page.h"
-#include "report/png.h"
 #include "texture/metric.h"
 
 namespace laygauge {

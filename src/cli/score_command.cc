@@ -12,7 +12,7 @@
 #include "batch/score_run.h"
 #include "cli/inputs.h"
 #include "report/draw_coupon.h"
-#include "report/png.h"
+#include "report/encode_png.h"
 #include "report/score_table.h"
 #include "report/scores_csv.h"
 

@@ -6,7 +6,7 @@
 
 #include "base/file.h"
 #include "cli/run_with.h"
-#include "report/png.h"
+#include "report/encode_png.h"
 
 namespace laygauge {
 namespace {

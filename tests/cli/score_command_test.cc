@@ -11,7 +11,7 @@
 #include "base/file.h"
 #include "cli/run_with.h"
 #include "photo/photo.h"
-#include "report/png.h"
+#include "report/encode_png.h"
 #include "support/encode.h"
 
 namespace laygauge {

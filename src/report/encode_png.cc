@@ -1,4 +1,4 @@
-#include "report/png.h"
+#include "report/encode_png.h"
 
 #include <fmt/format.h>
 #include <png.h>

@@ -1,4 +1,4 @@
-#include "report/png.h"
+#include "report/encode_png.h"
 
 #include <gtest/gtest.h>
 #include <unistd.h>
