@@ -216,6 +216,21 @@ std::optional<ToneCheck> CheckTone(const Photo& photo, const View& view,
   return tone;
 }
 
+// Paper at full scale only bounds the light from below; the grays are not clipped, and tell the
+// rest as far as they are printed as they should be.
+void RaiseByGrays(const Photo& photo, const View& view, const SheetDescription& sheet,
+                  Light& light) {
+  constexpr double kMostlyClippedPct = 50;
+  if (light.clipped_pct < kMostlyClippedPct || !light.tone) return;
+  std::vector<double> logs;
+  for (size_t i = 0; i < sheet.grays.size(); ++i) {
+    const double ratio = light.tone->measured[i] / sheet.grays[i].reflectance;
+    if (ratio > 0) logs.push_back(std::log(ratio));
+  }
+  light.coefficients[0] += std::max(0.0, Median(logs));
+  light.tone = CheckTone(photo, view, sheet, light);
+}
+
 void AddWarnings(const Photo& photo, const LightOptions& options, Light& light) {
   if (light.clipped_pct > 2) {
     light.warnings.push_back(fmt::format(
@@ -297,6 +312,7 @@ Expected<Light> EstimateLight(const Photo& photo, const View& view, const SheetD
   }
   light.unevenness = Unevenness(light, sheet);
   light.tone = CheckTone(photo, view, sheet, light);
+  RaiseByGrays(photo, view, sheet, light);
   AddWarnings(photo, options, light);
   return light;
 }

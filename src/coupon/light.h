@@ -48,7 +48,8 @@ struct Light {
 // Paper is sampled wherever the sheet prints nothing. Coupons that stick out of their wells,
 // their shadows, smudges, and whatever lies beyond a torn edge drop out of the fit (Tukey's
 // biweight, stricter on the dark side: all of these darken). Over-exposed paper counts as a lower
-// bound. Problem: paper not in the photo, or too dark.
+// bound; where most of it is, the gray patches raise the whole field to their nominal reflectance.
+// Problem: paper not in the photo, or too dark.
 [[nodiscard]] Expected<Light> EstimateLight(const Photo& photo, const View& view,
                                             const SheetDescription& sheet,
                                             const LightOptions& options);

@@ -122,6 +122,21 @@ TEST(Light, OverexposedPaperIsALowerBoundAndSaidSo) {
   }
 }
 
+// All paper but a corner is clipped, and the lightest gray; the darker ones are not.
+TEST(Light, GraysTellTheLightWherePaperIsClipped) {
+  const double gain = 1 / TrueLight({200, 74});
+  const Light light = Estimate(
+      [&](const cv::Point2d& p) { return std::min(1.0, gain * TrueLight(p) * Printed(p)); });
+  EXPECT_GT(light.clipped_pct, 70);
+  double mean = 0;
+  for (const GrayPatch& gray : A5().grays) {
+    mean += gain * TrueLight({gray.x_mm, gray.y_mm}) / light.At(gray.x_mm, gray.y_mm) /
+            static_cast<double>(A5().grays.size());
+  }
+  // The light's shape is lost, its level at the grays is not: they agree to a few per cent.
+  EXPECT_NEAR(mean, 1, 0.03);
+}
+
 TEST(Light, WarnsOfAToneCurveFarFromSrgb) {
   const Light light =
       Estimate([](const cv::Point2d& p) { return std::pow(0.8 * Printed(p), 1.5); });
