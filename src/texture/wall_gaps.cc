@@ -26,10 +26,14 @@ constexpr double kFieldMm = 0.55;     // beyond, lines lie undisturbed
 constexpr double kDeepestMm = 1.5;
 
 // An open seam is darker than the closed groove between the wall's loops by kOpener and dark in
-// itself, and takes more light than a closed one could (sample plates; docs/metrics.md).
-constexpr double kOpener = 0.18;
-constexpr double kMinDepth = 0.27;
-constexpr double kMinDarknessMm = 0.040;
+// itself, and takes more light than a closed one could (sample plates; docs/metrics.md). A sixth
+// below its limit it is closed, a sixth above it open, in between the more likely open.
+constexpr double kOpener = 0.16;
+constexpr double kMinDepth = 0.24;
+constexpr double kMinDarknessMm = 0.036;
+constexpr double kUnsure = 1.0 / 6;
+// Share of the light that the floor of an open seam misses.
+constexpr double kFloorDarkness = 0.6;
 // White walls light each other, which brightens an open seam: the limits shrink above this
 // reflectance as the darkness of gaps does (gaps.cc).
 double LimitsScale(double level) {
@@ -38,14 +42,18 @@ double LimitsScale(double level) {
   return std::min(1.0, (1 - kInterreflection * level) / (1 - kInterreflection * kGray));
 }
 
-constexpr double kMinOpenMm = 1.25;  // length of an open piece
+constexpr double kShortMm = 1.25;  // length of an open piece
+constexpr double kShortSlackMm = 0.5;
+// Of closed seam that the mean width is shrunk by, as if it had been seen besides: where next to
+// nothing is open, its width says nothing.
+constexpr double kShrinkMm = 5;
 
 struct Station {
   std::vector<float> profile;  // reflectance by depth, NaN where the patch ends
   double wall = 0;
   double field = 0;
   double groove = 0;  // darkest share of light missing in the groove between the loops
-  bool open = false;
+  double open = 0;    // how surely the seam is open: 0 no, 1 yes
   double width_mm = 0;
   double seam_depth_mm = 0;
 };
@@ -134,6 +142,25 @@ double Crossing(const std::vector<double>& dark, int peak, int step, double half
   return i - step;
 }
 
+// Light that is missing around `peak`, as the width of a wholly dark channel.
+double DarknessMm(const std::vector<double>& dark, int peak) {
+  const double least = 0.1 * dark[static_cast<std::size_t>(peak)];
+  double sum = 0;
+  const int end = static_cast<int>(dark.size());
+  for (int i = peak; i < end && dark[static_cast<std::size_t>(i)] > least; ++i) {
+    sum += dark[static_cast<std::size_t>(i)];
+  }
+  for (int i = peak - 1; i >= 0 && dark[static_cast<std::size_t>(i)] > least; --i) {
+    sum += dark[static_cast<std::size_t>(i)];
+  }
+  return sum * kSampleMm;
+}
+
+// How surely a value exceeds its limit, 0 to 1.
+double Exceeds(double value, double limit) {
+  return std::clamp(0.5 + (value / limit - 1) / (2 * kUnsure), 0.0, 1.0);
+}
+
 void JudgeStation(Station* station, const Depths& depths, double wall_mm, double closed_width_mm,
                   double scale) {
   std::vector<double> dark;
@@ -149,26 +176,22 @@ void JudgeStation(Station* station, const Depths& depths, double wall_mm, double
   const auto peak = static_cast<int>(
       std::max_element(dark.begin() + first, dark.begin() + last + 1) - dark.begin());
   const double depth = dark[static_cast<std::size_t>(peak)];
-  if (!(depth > scale * kMinDepth) || depth - station->groove < scale * kOpener) {
+  if (!(depth > 0)) {
     return;
   }
-  double area_mm = 0;
-  const int end = static_cast<int>(dark.size());
-  for (int i = peak; i < end && dark[static_cast<std::size_t>(i)] > 0.1 * depth; ++i) {
-    area_mm += dark[static_cast<std::size_t>(i)] * kSampleMm;
-  }
-  for (int i = peak - 1; i >= 0 && dark[static_cast<std::size_t>(i)] > 0.1 * depth; --i) {
-    area_mm += dark[static_cast<std::size_t>(i)] * kSampleMm;
-  }
-  if (area_mm < scale * kMinDarknessMm) {
+  const double darkness_mm = DarknessMm(dark, peak);
+  station->open = std::min({Exceeds(depth, scale * kMinDepth),
+                            Exceeds(depth - station->groove, scale * kOpener),
+                            Exceeds(darkness_mm, scale * kMinDarknessMm)});
+  if (station->open == 0) {
     return;
   }
   const double low = Crossing(dark, peak, -1, depth / 2);
   const double high = Crossing(dark, peak, 1, depth / 2);
   const double seen_mm = (high - low) * kSampleMm;
-  station->open = true;
-  station->width_mm =
+  const double at_half_mm =
       std::sqrt(std::max(0.0, seen_mm * seen_mm - closed_width_mm * closed_width_mm));
+  station->width_mm = (at_half_mm + darkness_mm / scale / kFloorDarkness) / 2;
   station->seam_depth_mm = depths.Mm(from + (low + high) / 2);
 }
 
@@ -199,25 +222,61 @@ Seam JudgeSeam(const Patch& patch, const Contour& contour, const Depths& depths,
   return seam;
 }
 
-// Open pieces shorter than kMinOpenMm are taken for the valleys of lines that end at the wall.
-// Marks the others.
-void KeepPieces(Seam* seam, std::vector<Mark>* marks) {
-  auto& stations = seam->stations;
+// A station is as open as the least open one of the best stretch of `length` stations around it
+// (morphological opening): shorter pieces go.
+std::vector<double> Opened(const Seam& seam, int length) {
+  const int count = static_cast<int>(seam.stations.size());
+  const auto at = [&](int i) {
+    return static_cast<std::size_t>(seam.contour.closed ? i % count : i);
+  };
+  std::vector<double> opened(static_cast<std::size_t>(count), 0);
+  const int starts = seam.contour.closed ? count : count - length + 1;
+  for (int start = 0; start < starts; ++start) {
+    double least = 1;
+    for (int i = start; i < start + length && least > 0; ++i) {
+      least = std::min(least, seam.stations[at(i)].open);
+    }
+    for (int i = start; i < start + length && least > 0; ++i) {
+      opened[at(i)] = std::max(opened[at(i)], least);
+    }
+  }
+  return opened;
+}
+
+// Open pieces of about kShortMm are taken for the valleys of lines that end at the wall: half of a
+// piece of that length counts, none of one kShortSlackMm shorter, all of one that is as much
+// longer.
+void DropShortPieces(Seam* seam) {
+  const auto stations = [&](double mm) {
+    return static_cast<int>(std::lround(mm / seam->contour.step_mm));
+  };
+  const int shortest = std::max(1, stations(kShortMm - kShortSlackMm));
+  const int longest = std::max(shortest, stations(kShortMm + kShortSlackMm));
+  std::vector<double> open(seam->stations.size(), 0);
+  for (int length = shortest; length <= longest; ++length) {
+    const std::vector<double> opened = Opened(*seam, length);
+    for (std::size_t i = 0; i < open.size(); ++i) {
+      open[i] += opened[i] / (longest - shortest + 1);
+    }
+  }
+  for (std::size_t i = 0; i < open.size(); ++i) {
+    seam->stations[i].open = open[i];
+  }
+}
+
+// Marks the pieces that are more likely open than closed.
+void MarkPieces(const Seam& seam, std::vector<Mark>* marks) {
+  const auto& stations = seam.stations;
   for (std::size_t i = 0; i < stations.size();) {
     std::size_t end = i;
-    while (end < stations.size() && stations[end].open) {
+    while (end < stations.size() && stations[end].open >= 0.5) {
       ++end;
     }
-    const double length_mm = static_cast<double>(end - i) * seam->contour.step_mm;
-    if (end > i && length_mm < kMinOpenMm) {
-      for (std::size_t k = i; k < end; ++k) {
-        stations[k].open = false;
-      }
-    } else if (end > i) {
+    if (end > i) {
       Mark mark;
       mark.kind = MarkKind::kWallGap;
       for (std::size_t k = i; k < end; ++k) {
-        const ContourPoint& at = seam->contour.points[k];
+        const ContourPoint& at = seam.contour.points[k];
         mark.path_mm.emplace_back(at.point_mm + stations[k].seam_depth_mm * at.inward);
         mark.width_mm += stations[k].width_mm / static_cast<double>(end - i);
       }
@@ -230,24 +289,19 @@ void KeepPieces(Seam* seam, std::vector<Mark>* marks) {
 struct Total {
   double length_mm = 0;
   double open_mm = 0;
-  double width_mm2 = 0;  // widths times lengths
+  double width_mm2 = 0;  // widths times open lengths
   double width_squares = 0;
-  int pieces = 0;
 };
 
 Total Sum(const std::vector<Seam>& seams) {
   Total total;
   for (const Seam& seam : seams) {
-    bool before = false;
+    const double step_mm = seam.contour.step_mm;
     for (const Station& station : seam.stations) {
-      total.length_mm += seam.contour.step_mm;
-      if (station.open) {
-        total.open_mm += seam.contour.step_mm;
-        total.width_mm2 += station.width_mm * seam.contour.step_mm;
-        total.width_squares += station.width_mm * station.width_mm * seam.contour.step_mm;
-        total.pieces += before ? 0 : 1;
-      }
-      before = station.open;
+      total.length_mm += step_mm;
+      total.open_mm += station.open * step_mm;
+      total.width_mm2 += station.open * station.width_mm * step_mm;
+      total.width_squares += station.open * station.width_mm * station.width_mm * step_mm;
     }
   }
   return total;
@@ -271,7 +325,8 @@ Finding MeasureWallGaps(const Surface& surface) {
   std::vector<Seam> seams;
   for (const Contour& contour : SampleContours(*surface.coupon, kStepMm, wall_mm, kCornerMm)) {
     seams.push_back(JudgeSeam(patch, contour, depths, wall_mm));
-    KeepPieces(&seams.back(), &finding.marks);
+    DropShortPieces(&seams.back());
+    MarkPieces(seams.back(), &finding.marks);
   }
   const Total total = Sum(seams);
   if (!(total.length_mm > 0) || !(wall_mm > 0.3)) {
@@ -281,17 +336,19 @@ Finding MeasureWallGaps(const Surface& surface) {
     finding.features.assign(3, none);
     return finding;
   }
-  const double share = total.open_mm / total.length_mm;
   // Open and closed alternate in pieces: their number says how well the share is known.
-  const double share_sd = std::sqrt(std::max(share * (1 - share), 0.01) / (total.pieces + 1.0));
-  const double width_mm = total.open_mm > 0 ? total.width_mm2 / total.open_mm : 0;
-  const double variance =
-      total.open_mm > 0 ? total.width_squares / total.open_mm - width_mm * width_mm : 0;
-  const double width_sd = std::sqrt(std::max(0.0, variance) / std::max(1, total.pieces));
-  finding.features = {
-      {100 * share, 100 * share_sd, ""},
-      {width_mm, std::max(width_sd, 0.005), ""},
-      {share * width_mm, std::hypot(share_sd * width_mm, share * std::max(width_sd, 0.005)), ""}};
+  const double pieces = static_cast<double>(finding.marks.size());
+  const double share = total.open_mm / total.length_mm;
+  const double share_sd = std::sqrt(std::max(share * (1 - share), 0.01) / (pieces + 1));
+  const double weight_mm = total.open_mm + kShrinkMm;
+  const double width_mm = total.width_mm2 / weight_mm;
+  const double variance = total.width_squares / weight_mm - width_mm * width_mm;
+  const double width_sd =
+      std::max(std::sqrt(std::max(0.0, variance) / std::max(1.0, pieces)), 0.005);
+  const double mean_mm = total.width_mm2 / total.length_mm;
+  finding.features = {{100 * share, 100 * share_sd, ""},
+                      {width_mm, width_sd, ""},
+                      {mean_mm, std::hypot(share_sd * width_mm, share * width_sd), ""}};
   return finding;
 }
 
@@ -299,9 +356,9 @@ Finding MeasureWallGaps(const Surface& surface) {
 
 Metric WallGapsMetric() {
   return {"wall_gaps",
-          2,
+          3,
           {{"wall_gap_pct", "share of the seam between field and walls that is open"},
-           {"wall_gap_mm", "mean width of the open parts, 0 where none is"},
+           {"wall_gap_mm", "mean width of the open parts, less where few are open"},
            {"wall_gap_mean_mm", "width averaged over the whole seam"}},
           &MeasureWallGaps};
 }

@@ -148,6 +148,37 @@ double ScoreDeviation(const std::string& plate, const std::string& other_plate) 
   return std::sqrt(Mean(squares) / 2);
 }
 
+// The largest difference of a feature between two photos of the same coupons, in units of its
+// standard deviation over all coupons.
+double LargestDifference(const std::string& feature, const std::string& plate,
+                         const std::string& other_plate) {
+  std::vector<double> all;
+  std::map<std::string, double> values;
+  for (const MeasuredCoupon& coupon : MeasuredCoupons()) {
+    const auto value = coupon.Value(feature);
+    if (!value) continue;
+    all.push_back(*value);
+    if (coupon.plate == plate) values[coupon.record->well] = *value;
+  }
+  double largest = 0;
+  for (const MeasuredCoupon& coupon : MeasuredCoupons()) {
+    const auto value = coupon.Value(feature);
+    if (coupon.plate != other_plate || !value) continue;
+    largest = std::max(largest, std::abs(*value - values.at(coupon.record->well)));
+  }
+  double squares = 0;
+  for (const double value : all) squares += (value - Mean(all)) * (value - Mean(all));
+  return largest / std::sqrt(squares / static_cast<double>(all.size() - 1));
+}
+
+// Promised: a tenth of the spread laid anew, a fifth with another camera, distance and light.
+TEST(SamplePlates, TheSameCouponsHaveTheSameGaps) {
+  for (const char* feature : {"wall_gap_pct", "wall_gap_mm", "wall_gap_mean_mm"}) {
+    EXPECT_LE(LargestDifference(feature, "d2", "d7"), 0.1) << feature;
+    EXPECT_LE(LargestDifference(feature, "d2", "d3"), 0.2) << feature;
+  }
+}
+
 // Promised: 0.08 points laid anew in the same lightbox, 0.25 with another camera, distance and
 // light.
 TEST(SamplePlates, TheSameCouponsScoreTheSame) {

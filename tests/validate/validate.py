@@ -83,8 +83,6 @@ a value in one of the two alone.
 Why columns go beyond it:
 
 - Counts move in whole steps: one scar is 1.2 spreads, and a blob that fades by half moves its count.
-- `wall_gap_mm` is 0 where no seam is open and some 0.17 mm where one piece of 1.25 mm is: use
-  `wall_gap_mean_mm`, which has no such step.
 - The second harmonic is finer than 0.25 mm, where coding and sharpness take most; phase agreement
   and scatter say little where ridges hide the lines (one coupon of d5).
 - Other light (d2, d3) shows slopes and ridges differently: light across the lines shows their flanks,
