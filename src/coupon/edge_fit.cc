@@ -118,28 +118,45 @@ struct Equations {
   }
 };
 
+struct Estimate {
+  Pose pose;
+  double outline_inset_mm = kExpectedInset_mm;
+  double hole_inset_mm = kExpectedInset_mm;
+};
+
 struct Fitter {
   const cv::Mat& picture;
   double px_per_mm;
   cv::Point2d origin_px;
   const WallView& wall;
-  Pose pose;
-  double outline_inset_mm = kExpectedInset_mm;
-  double hole_inset_mm = kExpectedInset_mm;
+  Estimate now;
   std::vector<double> profile{};
+  Pose looked_from{};                          // the pose of `looked`
+  std::vector<std::vector<Extreme>> looked{};  // the extremes across each piece
 
   double Inset_mm(const EdgePiece& piece) const {
-    return piece.is_hole ? hole_inset_mm : outline_inset_mm;
+    return piece.is_hole ? now.hole_inset_mm : now.outline_inset_mm;
   }
 
   double Foot_mm(const EdgePiece& piece) const {
-    return wall.FootOutward_mm(pose.center_mm + Turned(piece.middle_mm, pose.turn_deg),
-                               Turned(piece.middle_outward, pose.turn_deg));
+    const Turn turn(now.pose.turn_deg);
+    return wall.FootOutward_mm(now.pose.center_mm + turn(piece.middle_mm),
+                               turn(piece.middle_outward));
+  }
+
+  // How far the piece's edge has moved outward since Look().
+  double Moved_mm(const EdgePiece& piece) const {
+    const Turn turn(now.pose.turn_deg);
+    const cv::Point2d moved = now.pose.center_mm + turn(piece.middle_mm) - looked_from.center_mm -
+                              Turned(piece.middle_mm, looked_from.turn_deg);
+    return moved.dot(turn(piece.middle_outward));
   }
 
   void TakeProfile(const EdgePiece& piece, int count);
   std::vector<Extreme> Extremes(const EdgePiece& piece, double faintest_per_mm);
-  void AddPiece(const EdgePiece& piece, double width_mm, Equations& equations);
+  void Look(const std::vector<EdgePiece>& pieces);
+  void AddPiece(const EdgePiece& piece, const std::vector<Extreme>& extremes, double width_mm,
+                Equations& equations) const;
   Equations Improve(const std::vector<EdgePiece>& pieces, double width_mm);
   bool IsSeen(const EdgePiece& piece);
 };
@@ -147,10 +164,11 @@ struct Fitter {
 // Mean brightness along the piece, from kProfileReach_mm inward, every kProfileStep_mm outward.
 void Fitter::TakeProfile(const EdgePiece& piece, int count) {
   profile.assign(count, 0.0);
-  const Turn turn(pose.turn_deg);
+  const Turn turn(now.pose.turn_deg);
   for (size_t i = 0; i < piece.points_mm.size(); ++i) {
     const cv::Point2d outward = turn(piece.outward[i]) * px_per_mm;
-    const cv::Point2d edge_px = (pose.center_mm + turn(piece.points_mm[i])) * px_per_mm + origin_px;
+    const cv::Point2d edge_px =
+        (now.pose.center_mm + turn(piece.points_mm[i])) * px_per_mm + origin_px;
     AddProfile(picture, edge_px - outward * kProfileReach_mm, outward * kProfileStep_mm, profile);
   }
   for (double& value : profile) value /= static_cast<double>(piece.points_mm.size());
@@ -179,33 +197,42 @@ std::vector<Extreme> Fitter::Extremes(const EdgePiece& piece, double faintest_pe
   return extremes;
 }
 
-void Fitter::AddPiece(const EdgePiece& piece, double width_mm, Equations& equations) {
-  const cv::Point2d outward = Turned(piece.middle_outward, pose.turn_deg);
-  const cv::Point2d arm = Turned(piece.middle_mm, pose.turn_deg);
-  const auto extremes = Extremes(piece, kFaintest_per_mm);
+// Finds the extremes for the rounds to come, in which the pose moves little.
+void Fitter::Look(const std::vector<EdgePiece>& pieces) {
+  looked_from = now.pose;
+  looked.clear();
+  for (const EdgePiece& piece : pieces) looked.push_back(Extremes(piece, kFaintest_per_mm));
+}
+
+void Fitter::AddPiece(const EdgePiece& piece, const std::vector<Extreme>& extremes, double width_mm,
+                      Equations& equations) const {
+  const Turn turn(now.pose.turn_deg);
+  const cv::Point2d outward = turn(piece.middle_outward);
+  const cv::Point2d arm = turn(piece.middle_mm);
   Vector5 row;
   row << outward.x, outward.y, outward.dot({arm.y, -arm.x}), piece.is_hole ? 0.0 : -1.0,
       piece.is_hole ? -1.0 : 0.0;
+  const double moved_mm = Moved_mm(piece);
   const double foot_mm = Foot_mm(piece);
   const bool foot_visible = foot_mm > kVisibleFoot_mm;
   // Edge and foot too close to be told apart: what is seen lies between the two.
   const double merged_mm = foot_mm > 0 && !foot_visible ? foot_mm / 2 : 0;
   const double expected_mm = merged_mm - Inset_mm(piece);
-  const Match edge =
-      FindMatch(extremes, expected_mm, foot_visible ? foot_mm : kNowhere_mm, width_mm);
-  equations.Add(row, edge.outward_mm - merged_mm, edge.outward_mm - expected_mm,
-                edge.weight * piece.length_mm);
+  const Match edge = FindMatch(extremes, moved_mm + expected_mm,
+                               foot_visible ? moved_mm + foot_mm : kNowhere_mm, width_mm);
+  const double edge_mm = edge.outward_mm - moved_mm;
+  equations.Add(row, edge_mm - merged_mm, edge_mm - expected_mm, edge.weight * piece.length_mm);
   if (!foot_visible) return;
-  const Match foot = FindMatch(extremes, foot_mm, expected_mm, width_mm);
+  const Match foot = FindMatch(extremes, moved_mm + foot_mm, moved_mm + expected_mm, width_mm);
+  const double off_mm = foot.outward_mm - moved_mm - foot_mm;
   row.tail<2>().setZero();
-  equations.Add(row, foot.outward_mm - foot_mm, foot.outward_mm - foot_mm,
-                foot.weight * piece.length_mm);
+  equations.Add(row, off_mm, off_mm, foot.weight * piece.length_mm);
 }
 
 // One round of least squares: moves `pose` and the insets.
 Equations Fitter::Improve(const std::vector<EdgePiece>& pieces, double width_mm) {
   Equations equations;
-  for (const EdgePiece& piece : pieces) AddPiece(piece, width_mm, equations);
+  for (size_t i = 0; i < pieces.size(); ++i) AddPiece(pieces[i], looked[i], width_mm, equations);
   for (const int i : {3, 4}) {
     // Known before: as good as 20 mm of edge that is located to the round's width.
     const double weight = 20 * width_mm * width_mm / (kInsetSd_mm * kInsetSd_mm);
@@ -213,10 +240,10 @@ Equations Fitter::Improve(const std::vector<EdgePiece>& pieces, double width_mm)
     equations.right(i) += weight * kExpectedInset_mm;
   }
   const Vector5 step = equations.normal.ldlt().solve(equations.right);
-  pose.center_mm += cv::Point2d(step[0], step[1]);
-  pose.turn_deg += step[2] * 180 / CV_PI;
-  outline_inset_mm = step[3];
-  hole_inset_mm = step[4];
+  now.pose.center_mm += cv::Point2d(step[0], step[1]);
+  now.pose.turn_deg += step[2] * 180 / CV_PI;
+  now.outline_inset_mm = step[3];
+  now.hole_inset_mm = step[4];
   return equations;
 }
 
@@ -254,17 +281,31 @@ void CountSeen(const CouponDescription& coupon, Fitter& fitter, EdgeFit& fit) {
 }  // namespace
 
 EdgeFit FitEdges(const cv::Mat& picture, double px_per_mm, const cv::Point2d& origin_px,
-                 const CouponDescription& coupon, const WallView& wall, const Pose& start) {
+                 const CouponDescription& coupon, const WallView& wall,
+                 const std::vector<Pose>& starts) {
   constexpr std::array<double, 6> kWidths_mm = {0.2, 0.14, 0.1, 0.07, 0.07, 0.07};
+  constexpr std::array<double, 3> kLastWidths_mm = {0.1, 0.07, 0.07};
   const auto pieces = CutEdges(coupon, 2, 0.1);
-  Fitter fitter{picture, px_per_mm, origin_px, wall, start};
+  Fitter fitter{picture, px_per_mm, origin_px, wall, {starts.front()}};
+  fitter.Look(pieces);
+  Estimate best;
+  double most_matched_mm = -1;
   Equations last;
-  for (const double width_mm : kWidths_mm) last = fitter.Improve(pieces, width_mm);
+  for (const Pose& start : starts) {
+    fitter.now = {start};
+    for (const double width_mm : kWidths_mm) last = fitter.Improve(pieces, width_mm);
+    if (last.weights <= most_matched_mm) continue;
+    most_matched_mm = last.weights;
+    best = fitter.now;
+  }
+  fitter.now = best;
+  fitter.Look(pieces);
+  for (const double width_mm : kLastWidths_mm) last = fitter.Improve(pieces, width_mm);
 
   EdgeFit fit;
-  fit.pose = fitter.pose;
-  fit.outline_inset_mm = fitter.outline_inset_mm;
-  fit.hole_inset_mm = fitter.hole_inset_mm;
+  fit.pose = fitter.now.pose;
+  fit.outline_inset_mm = fitter.now.outline_inset_mm;
+  fit.hole_inset_mm = fitter.now.hole_inset_mm;
   fit.residual_mm = last.weights > 0 ? std::sqrt(last.squares / last.weights) : 0;
   fit.matched_mm = last.weights;
   const Matrix5 covariance =

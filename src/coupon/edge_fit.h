@@ -22,7 +22,8 @@ struct EdgeFit {
   double holes_seen = 0;    // the same of the worst hole; 0 without holes
 };
 
-// Sub-pixel pose by robust least squares from `start`, which must be right to about 0.3 mm.
+// Sub-pixel pose by robust least squares from `starts`, at least one of which must be right to
+// about 0.3 mm; they lie as close to one another. The fit that more edges agree with is taken.
 //
 // Across each piece a brightness profile, averaged along the piece, is taken; the edges in it are
 // the extremes of its slope. Each is compared with where the top's edge should be and, on sides
@@ -31,6 +32,6 @@ struct EdgeFit {
 // (Welsch's function), whose width shrinks from round to round.
 [[nodiscard]] EdgeFit FitEdges(const cv::Mat& picture, double px_per_mm,
                                const cv::Point2d& origin_px, const CouponDescription& coupon,
-                               const WallView& wall, const Pose& start);
+                               const WallView& wall, const std::vector<Pose>& starts);
 
 }  // namespace laygauge

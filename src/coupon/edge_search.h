@@ -39,6 +39,9 @@ struct PoseGrid {
   double reach_mm = 4.5;  // positions: this far either way, one pixel apart
   double turn_reach_deg = 8;
   double turn_step_deg = 1;
+  // Tried on top of each of these turns. The outline must look the same after each of them, as its
+  // score is found only once.
+  std::vector<double> same_outline_deg = {0};
 };
 
 struct ScoredPose {
@@ -46,9 +49,9 @@ struct ScoredPose {
   double score = 0;  // 0..1: share of the edges' length that is seen, weighed by contrast
 };
 
-// The best pose of each turn, best first. The score of a piece is the brightness step across it,
-// averaged along it (texture cancels in that, an edge of either sign does not), s / (s + half);
-// for a piece under which the wall shows, edge and foot count together.
+// The best pose of each turn, best first. The score of a piece is the brightness step
+// across it, averaged along it (texture cancels in that, an edge of either sign does not), s / (s +
+// half); for a piece under which the wall shows, edge and foot count together.
 [[nodiscard]] std::vector<ScoredPose> SearchPoses(const GradientPicture& gradient,
                                                   const std::vector<EdgePiece>& pieces,
                                                   const WallView& wall, const PoseGrid& grid);

@@ -5,6 +5,7 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
+#include <map>
 #include <opencv2/imgproc.hpp>
 #include <vector>
 
@@ -20,19 +21,20 @@ namespace {
 constexpr double kFine_px_per_mm = 10;
 constexpr int kReduction = 4;  // coarse: 2.5 px/mm
 
-// Half the side of the square, round the well's centre, in which the coupon's edges can lie.
-double HalfSide_mm(const CouponDescription& coupon, const LocateOptions& options) {
-  constexpr double kBeyond_mm = 1.5;  // walls' feet, profiles
+// How far off the coupon's outline edges are looked for: walls' feet, profiles.
+constexpr double kBeyond_mm = 1.5;
+
+// Half the side of the square round the coupon's origin that holds its outline, turned by up to
+// `turn_reach_deg` and by whole quarters.
+double HalfSide_mm(const CouponDescription& coupon, double turn_reach_deg) {
   double furthest_mm = 0;
-  for (const double quarter_deg : {0.0, 90.0}) {
-    for (const double turn_deg : {-options.turn_reach_deg - 1, 0.0, options.turn_reach_deg + 1}) {
-      for (const cv::Point2d& corner : coupon.outline_mm) {
-        const cv::Point2d turned = Turned(corner, quarter_deg + turn_deg);
-        furthest_mm = std::max({furthest_mm, std::abs(turned.x), std::abs(turned.y)});
-      }
+  for (const double turn_deg : {-turn_reach_deg, 0.0, turn_reach_deg}) {
+    for (const cv::Point2d& corner : coupon.outline_mm) {
+      const cv::Point2d turned = Turned(corner, turn_deg);
+      furthest_mm = std::max({furthest_mm, std::abs(turned.x), std::abs(turned.y)});
     }
   }
-  return furthest_mm + options.reach_mm + kBeyond_mm;
+  return furthest_mm;
 }
 
 // The well in the plane of the coupon's top: encoded brightness over the paper's.
@@ -70,14 +72,23 @@ WallView ViewOfWalls(const View& view, const Well& well, double height_mm) {
 
 double NormalisedTurn(double turn_deg) { return std::remainder(turn_deg, 360); }
 
-// The quarter turns at which the drawing looks new.
-std::vector<double> QuarterTurns(const CouponDescription& coupon) {
-  std::vector<double> turns = {0};
-  if (!LooksTheSameTurned(coupon, 90)) {
-    turns.push_back(90);
-    if (!LooksTheSameTurned(coupon, 180)) turns.insert(turns.end(), {180, 270});
+// The quarter turns at which the drawing looks new: each of `outline_deg` plus each of `holes_deg`.
+// After the latter the outline looks the same.
+struct QuarterTurns {
+  std::vector<double> outline_deg = {0};
+  std::vector<double> holes_deg = {0};
+};
+
+QuarterTurns QuarterTurnsOf(const CouponDescription& coupon) {
+  if (LooksTheSameTurned(coupon, 90)) return {};
+  const bool half_is_new = !LooksTheSameTurned(coupon, 180);
+  if (OutlineLooksTheSameTurned(coupon, 90)) {
+    return {{0}, half_is_new ? std::vector<double>{0, 90, 180, 270} : std::vector<double>{0, 90}};
   }
-  return turns;
+  if (OutlineLooksTheSameTurned(coupon, 180)) {
+    return {{0, 90}, half_is_new ? std::vector<double>{0, 180} : std::vector<double>{0}};
+  }
+  return {{0, 90, 180, 270}, {0}};
 }
 
 // Bare paper or an evenly printed floor: nothing within the well's frame stands out.
@@ -145,61 +156,129 @@ bool LooksUpsideDown(const GradientPicture& fine, const CouponDescription& coupo
   });
 }
 
-// FitEdges from `start`, and from where the coupon lies if `start` took a narrow visible wall's
-// foot for its edge: that much further from the camera. The one that more edges agree with.
-EdgeFit FitBoth(const WellPicture& picture, const CouponDescription& coupon, const WallView& wall,
-                const Pose& start) {
-  const auto fit = [&](const Pose& pose) {
-    return FitEdges(picture.brightness, kFine_px_per_mm, picture.origin_px, coupon, wall, pose);
-  };
-  const EdgeFit first = fit(start);
-  const cv::Point2d foot_mm = wall.offset_mm - start.center_mm * wall.per_mm;
+// `found`, and where the coupon lies if there a narrow visible wall's foot was taken for its edge:
+// that much further from the camera.
+std::vector<Pose> StartsOfFit(const WallView& wall, const Pose& found) {
+  const cv::Point2d foot_mm = wall.offset_mm - found.center_mm * wall.per_mm;
   const double length_mm = cv::norm(foot_mm);
   constexpr double kNarrowest_mm = 0.05;
   constexpr double kWidest_mm = 0.5;  // wider, edge and foot are told apart from the start
-  if (length_mm < kNarrowest_mm || length_mm > kWidest_mm) return first;
-  const EdgeFit second = fit({start.center_mm - foot_mm * 0.5, start.turn_deg});
-  return second.matched_mm > first.matched_mm ? second : first;
+  if (length_mm < kNarrowest_mm || length_mm > kWidest_mm) return {found};
+  return {found, {found.center_mm - foot_mm * 0.5, found.turn_deg}};
 }
 
-// Coarse to fine: the few best of all turns and quarters on the reduced picture, then those on the
-// full one, then the best of these to a fraction of a pixel.
-Candidate Search(const WellPicture& picture, const cv::Mat& reduced,
-                 const CouponDescription& coupon, const WallView& wall,
-                 const LocateOptions& options) {
+// The few best poses of the reduced picture, at most two of a quarter.
+std::vector<ScoredPose> FindStarts(const cv::Mat& reduced, const CouponDescription& coupon,
+                                   const QuarterTurns& quarters, const WallView& wall,
+                                   const LocateOptions& options) {
   constexpr size_t kStarts = 3;
+  constexpr int kOfQuarter = 2;
   const GradientPicture coarse =
       MakeGradient(reduced, kFine_px_per_mm / kReduction,
                    {(reduced.cols - 1) / 2.0, (reduced.rows - 1) / 2.0}, 0.8);
-  const auto coarse_pieces = CutEdges(coupon, 6, 0.8);
+  const auto pieces = CutEdges(coupon, 6, 0.8);
   std::vector<ScoredPose> starts;
-  for (const double quarter_deg : QuarterTurns(coupon)) {
+  for (const double outline_deg : quarters.outline_deg) {
     PoseGrid grid;
-    grid.middle.turn_deg = quarter_deg;
+    grid.middle.turn_deg = outline_deg;
     grid.reach_mm = options.reach_mm;
     grid.turn_reach_deg = options.turn_reach_deg;
     grid.turn_step_deg = 1;
-    const auto found = SearchPoses(coarse, coarse_pieces, wall, grid);
-    starts.insert(starts.end(), found.begin(), found.begin() + std::min<size_t>(2, found.size()));
+    grid.same_outline_deg = quarters.holes_deg;
+    std::map<long, int> taken;
+    for (const ScoredPose& found : SearchPoses(coarse, pieces, wall, grid)) {
+      if (taken[std::lround(found.pose.turn_deg / 90)]++ < kOfQuarter) starts.push_back(found);
+    }
   }
   std::sort(starts.begin(), starts.end(), IsBetter);
+  starts.resize(std::min(kStarts, starts.size()));
+  return starts;
+}
 
-  const GradientPicture fine =
-      MakeGradient(picture.brightness, kFine_px_per_mm, picture.origin_px, 1.0);
-  const auto fine_pieces = CutEdges(coupon, 4, 0.3);
+constexpr double kNearReach_mm = 0.7;
+constexpr double kNearTurnReach_deg = 1;
+
+// The full picture's gradient where a coupon lies that is near one of the starts.
+GradientPicture GradientNear(const WellPicture& picture, const CouponDescription& coupon,
+                             const std::vector<ScoredPose>& starts) {
+  cv::Rect part;
+  for (const ScoredPose& start : starts) {
+    const double turn_deg = std::abs(std::remainder(start.pose.turn_deg, 90));
+    const double half_side_mm =
+        HalfSide_mm(coupon, turn_deg + 2 * kNearTurnReach_deg) + kNearReach_mm + kBeyond_mm;
+    const cv::Point2d half(half_side_mm, half_side_mm);
+    const cv::Point2d center_mm = start.pose.center_mm;
+    part |= cv::Rect((center_mm - half) * kFine_px_per_mm + picture.origin_px,
+                     (center_mm + half) * kFine_px_per_mm + picture.origin_px);
+  }
+  part &= cv::Rect({0, 0}, picture.brightness.size());
+  return MakeGradient(picture.brightness(part), kFine_px_per_mm,
+                      picture.origin_px - cv::Point2d(part.tl()), 1.0);
+}
+
+// How far `turn_deg` is off the grid's middle turn in any of its quarters.
+double OffMiddle_deg(const PoseGrid& grid, double turn_deg) {
+  double least_deg = 360;
+  for (const double quarter_deg : grid.same_outline_deg) {
+    const double off_deg = NormalisedTurn(turn_deg - grid.middle.turn_deg - quarter_deg);
+    least_deg = std::min(least_deg, std::abs(off_deg));
+  }
+  return least_deg;
+}
+
+// Whether a search from `pose` would find what that of the grid has found: it is the next on the
+// reduced picture.
+bool IsSearched(const PoseGrid& grid, const Pose& pose) {
+  constexpr double kNext_mm = 1.1 * kReduction / kFine_px_per_mm;
+  const cv::Point2d off_mm = pose.center_mm - grid.middle.center_mm;
+  return std::max(std::abs(off_mm.x), std::abs(off_mm.y)) <= kNext_mm &&
+         OffMiddle_deg(grid, pose.turn_deg) <= grid.turn_reach_deg;
+}
+
+// The best pose of the full picture near the starts, in any of their quarters.
+Pose SearchNearStarts(const GradientPicture& fine, const CouponDescription& coupon,
+                      const QuarterTurns& quarters, const WallView& wall,
+                      const std::vector<ScoredPose>& starts) {
+  constexpr int kMostRounds = 3;
+  const auto pieces = CutEdges(coupon, 4, 0.3);
+  std::vector<PoseGrid> searched;
   ScoredPose best;
   best.score = -1;
-  for (size_t i = 0; i < std::min(kStarts, starts.size()); ++i) {
-    PoseGrid near;
-    near.middle = starts[i].pose;
-    near.reach_mm = 0.7;
-    near.turn_reach_deg = 1.0;
-    near.turn_step_deg = 0.25;
-    const ScoredPose found = SearchPoses(fine, fine_pieces, wall, near).front();
-    if (found.score > best.score) best = found;
+  for (const ScoredPose& start : starts) {
+    ScoredPose found = start;
+    // A best turn at the end of those that were tried need not be the best.
+    for (int round = 0; round < kMostRounds; ++round) {
+      const auto covers = [&](const PoseGrid& grid) { return IsSearched(grid, found.pose); };
+      if (round == 0 && std::ranges::any_of(searched, covers)) break;
+      PoseGrid near;
+      near.middle = found.pose;
+      near.reach_mm = kNearReach_mm;
+      near.turn_reach_deg = kNearTurnReach_deg;
+      near.turn_step_deg = 0.25;
+      near.same_outline_deg = quarters.holes_deg;
+      found = SearchPoses(fine, pieces, wall, near).front();
+      if (found.score > best.score) best = found;
+      searched.push_back(near);
+      if (OffMiddle_deg(near, found.pose.turn_deg) < near.turn_reach_deg - near.turn_step_deg / 2) {
+        break;
+      }
+    }
   }
+  return best.pose;
+}
+
+// Coarse to fine: the few best of all turns and quarters on the reduced picture, then the best
+// near these on the full one, then that to a fraction of a pixel.
+Candidate Search(const WellPicture& picture, const cv::Mat& reduced,
+                 const CouponDescription& coupon, const WallView& wall,
+                 const LocateOptions& options) {
+  const QuarterTurns quarters = QuarterTurnsOf(coupon);
+  const auto starts = FindStarts(reduced, coupon, quarters, wall, options);
+  const GradientPicture fine = GradientNear(picture, coupon, starts);
+  const Pose near = SearchNearStarts(fine, coupon, quarters, wall, starts);
   Candidate candidate;
-  candidate.fit = FitBoth(picture, coupon, wall, best.pose);
+  candidate.fit = FitEdges(picture.brightness, kFine_px_per_mm, picture.origin_px, coupon, wall,
+                           StartsOfFit(wall, near));
   candidate.upside_down =
       !coupon.holes.empty() && LooksUpsideDown(fine, coupon, wall, candidate.fit.pose);
   return candidate;
@@ -267,8 +346,10 @@ WellFinding LocateCoupon(const Photo& photo, const View& view, const Light& ligh
     return Unclear(
         fmt::format("{}: this well is not in the photo; frame the whole sheet", well.name));
   }
+  const double half_side_mm =
+      HalfSide_mm(coupon, options.turn_reach_deg + 1) + options.reach_mm + kBeyond_mm;
   const WellPicture picture =
-      TakePicture(photo, view, light, well, coupon.thickness_mm, HalfSide_mm(coupon, options));
+      TakePicture(photo, view, light, well, coupon.thickness_mm, half_side_mm);
   cv::Mat reduced;
   cv::resize(picture.brightness, reduced, {}, 1.0 / kReduction, 1.0 / kReduction, cv::INTER_AREA);
   const double coarse_px_per_mm = kFine_px_per_mm / kReduction;

@@ -93,16 +93,18 @@ Turn::Turn(double turn_deg)
 
 cv::Point2d Turned(const cv::Point2d& point, double turn_deg) { return Turn(turn_deg)(point); }
 
-bool LooksTheSameTurned(const CouponDescription& coupon, double turn_deg) {
+bool OutlineLooksTheSameTurned(const CouponDescription& coupon, double turn_deg) {
   const auto& outline = coupon.outline_mm;
-  const bool same_outline =
-      std::all_of(outline.begin(), outline.end(), [&](const cv::Point2d& corner) {
-        const cv::Point2d turned = Turned(corner, turn_deg);
-        return std::any_of(outline.begin(), outline.end(), [&](const cv::Point2d& other) {
-          return cv::norm(other - turned) < kSame_mm;
-        });
-      });
-  return same_outline &&
+  return std::all_of(outline.begin(), outline.end(), [&](const cv::Point2d& corner) {
+    const cv::Point2d turned = Turned(corner, turn_deg);
+    return std::any_of(outline.begin(), outline.end(), [&](const cv::Point2d& other) {
+      return cv::norm(other - turned) < kSame_mm;
+    });
+  });
+}
+
+bool LooksTheSameTurned(const CouponDescription& coupon, double turn_deg) {
+  return OutlineLooksTheSameTurned(coupon, turn_deg) &&
          std::all_of(coupon.holes.begin(), coupon.holes.end(), [&](const Hole& hole) {
            const cv::Point2d turned = Turned({hole.x_mm, hole.y_mm}, turn_deg);
            return std::any_of(coupon.holes.begin(), coupon.holes.end(), [&](const Hole& other) {

@@ -39,7 +39,10 @@ class Turn {
 // `point` after that turn. For many points, make a Turn.
 [[nodiscard]] cv::Point2d Turned(const cv::Point2d& point, double turn_deg);
 
-// Whether the drawing looks the same after a turn about its origin, within 0.2 mm.
+// Whether the outline looks the same after a turn about its origin, within 0.2 mm.
+[[nodiscard]] bool OutlineLooksTheSameTurned(const CouponDescription& coupon, double turn_deg);
+
+// The same of the whole drawing, with its holes.
 [[nodiscard]] bool LooksTheSameTurned(const CouponDescription& coupon, double turn_deg);
 
 }  // namespace laygauge

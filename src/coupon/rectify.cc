@@ -4,10 +4,12 @@
 #include <array>
 #include <cmath>
 #include <cstdint>
-#include <limits>
+#include <cstring>
 #include <opencv2/core/hal/intrin.hpp>
 #include <opencv2/imgproc.hpp>
 #include <vector>
+
+#include "base/vectorize.h"
 
 namespace laygauge {
 namespace {
@@ -145,6 +147,7 @@ struct Stretch {
 };
 
 // By bilinear interpolation between the nodes, `row` pixels below the upper ones.
+LAYGAUGE_WIDE_VECTORS
 void MapStretch(const NodeMap& map, int column, int node_row, int row, const cv::Point2f& corner,
                 Stretch& stretch) {
   const float down = static_cast<float>(row) / kNodeStep_px;
@@ -200,62 +203,85 @@ void LimitToFrame(double photo_px_per_frame_px, cv::Mat& linear) {
   if (sd_px > 0) cv::GaussianBlur(linear, linear, {}, sd_px, sd_px, cv::BORDER_REPLICATE);
 }
 
+// Where a stretch's samples lie: the upper left of four pixels, as an offset, and how far beyond.
+struct Cells {
+  Ints offsets{};
+  Floats right{};
+  Floats down{};
+};
+
+LAYGAUGE_WIDE_VECTORS
+void FindCells(const Stretch& at, const cv::Size& size, int stride, Cells& cells) {
+  const auto largest_x = static_cast<float>(size.width - 1);
+  const auto largest_y = static_cast<float>(size.height - 1);
+  const int last_column = size.width - 2;  // that has a next one
+  const int last_row = size.height - 2;
+  for (int i = 0; i < kNodeStep_px; ++i) {
+    const float x = std::min(std::max(at.xs[i], 0.F), largest_x);
+    const float y = std::min(std::max(at.ys[i], 0.F), largest_y);
+    const int column = std::min(static_cast<int>(x), last_column);
+    const int row = std::min(static_cast<int>(y), last_row);
+    cells.offsets[i] = row * stride + column;
+    cells.right[i] = x - static_cast<float>(column);
+    cells.down[i] = y - static_cast<float>(row);
+  }
+}
+
+// Two neighbours' values in one number, the left one in its lower `bits`.
+struct Pairs {
+  int bits = 8;
+  Ints upper{};
+  Ints lower{};
+};
+
+LAYGAUGE_WIDE_VECTORS
+void Mix(const Pairs& pairs, const Cells& cells, int count, float* out) {
+  const unsigned mask = (1U << pairs.bits) - 1;
+  const float unit = 1.F / static_cast<float>(mask);
+  const auto mixed = [&](int pair, float right) {
+    const auto whole = static_cast<unsigned>(pair);
+    const auto first = static_cast<float>(static_cast<int>(whole & mask));
+    const auto second = static_cast<float>(static_cast<int>(whole >> pairs.bits));
+    return first + right * (second - first);
+  };
+  for (int i = 0; i < count; ++i) {
+    const float upper = mixed(pairs.upper[i], cells.right[i]);
+    const float lower = mixed(pairs.lower[i], cells.right[i]);
+    out[i] = unit * (upper + cells.down[i] * (lower - upper));
+  }
+}
+
 // Samples a photo's encoded values by bilinear interpolation. Loops of their own for what vectors
 // can do (positions, weights) and for what they cannot (fetching).
-template <class Pixel>
+template <class Pixel, class Pair>
 class EncodedSampler {
  public:
   explicit EncodedSampler(const cv::Mat& encoded)
-      : encoded_(encoded), beside_(encoded.cols > 1 ? 1 : 0), below_(encoded.rows > 1 ? 1 : 0) {}
+      : encoded_(encoded), stride_(static_cast<int>(encoded.step1())) {
+    static_assert(sizeof(Pair) == 2 * sizeof(Pixel));
+    pairs_.bits = 8 * static_cast<int>(sizeof(Pixel));
+  }
 
   void Sample(const Stretch& at, float* out) {
-    Split(at.xs, encoded_.cols - 1, columns_, right_);
-    Split(at.ys, encoded_.rows - 1, rows_, down_);
+    FindCells(at, encoded_.size(), stride_, cells_);
+    const auto* data = encoded_.ptr<Pixel>();
     for (int i = 0; i < at.count; ++i) {
-      const auto* p = encoded_.ptr<Pixel>(rows_[i]) + columns_[i];
-      const auto* q = encoded_.ptr<Pixel>(rows_[i] + below_) + columns_[i];
-      corners_[0][i] = p[0];
-      corners_[1][i] = p[beside_];
-      corners_[2][i] = q[0];
-      corners_[3][i] = q[beside_];
+      const Pixel* p = data + cells_.offsets[i];
+      Pair upper = 0;
+      Pair lower = 0;
+      std::memcpy(&upper, p, sizeof upper);
+      std::memcpy(&lower, p + stride_, sizeof lower);
+      pairs_.upper[i] = static_cast<int>(upper);
+      pairs_.lower[i] = static_cast<int>(lower);
     }
-    Mix(at.count, out);
+    Mix(pairs_, cells_, at.count, out);
   }
 
  private:
-  // Whole pixels, such that there is a next one, and the rest.
-  static void Split(const Floats& at, int last, Ints& whole, Floats& rest) {
-    const auto largest = static_cast<float>(last);
-    const int largest_whole = std::max(0, last - 1);
-    for (int i = 0; i < kNodeStep_px; ++i) {
-      const float inside = std::min(std::max(at[i], 0.F), largest);
-      whole[i] = std::min(static_cast<int>(inside), largest_whole);
-      rest[i] = inside - static_cast<float>(whole[i]);
-    }
-  }
-
-  void Mix(int count, float* out) const {
-    constexpr float kUnit = 1.F / static_cast<float>(std::numeric_limits<Pixel>::max());
-    const int* a = corners_[0].data();
-    const int* b = corners_[1].data();
-    const int* c = corners_[2].data();
-    const int* d = corners_[3].data();
-    for (int i = 0; i < count; ++i) {
-      const float right = right_[i];
-      const float upper = static_cast<float>(a[i]) * (1 - right) + static_cast<float>(b[i]) * right;
-      const float lower = static_cast<float>(c[i]) * (1 - right) + static_cast<float>(d[i]) * right;
-      out[i] = kUnit * (upper + down_[i] * (lower - upper));
-    }
-  }
-
   const cv::Mat& encoded_;
-  int beside_;
-  int below_;
-  Ints columns_{};
-  Ints rows_{};
-  Floats right_{};
-  Floats down_{};
-  std::array<Ints, 4> corners_{};  // upper left, right, lower left, right
+  int stride_;
+  Cells cells_;
+  Pairs pairs_;
 };
 
 // Samples the spline of a picture: pixel (0, 0) of the picture is (pad, pad) of `coefficients`.
@@ -340,10 +366,16 @@ cv::Mat Rectify(const Photo& photo, const View& view, const PlaneFrame& frame) {
 
 cv::Mat RectifyEncoded(const Photo& photo, const View& view, const PlaneFrame& frame) {
   const NodeMap map = MapNodes(view, frame);
-  return photo.encoded.depth() == CV_8U
-             ? SampleFrame(map, frame.size_px, {0, 0}, EncodedSampler<std::uint8_t>(photo.encoded))
-             : SampleFrame(map, frame.size_px, {0, 0},
-                           EncodedSampler<std::uint16_t>(photo.encoded));
+  cv::Mat encoded = photo.encoded;
+  if (encoded.cols < 2 || encoded.rows < 2) {
+    cv::copyMakeBorder(encoded, encoded, 0, 1, 0, 1, cv::BORDER_REPLICATE);
+  }
+  if (encoded.depth() == CV_8U) {
+    return SampleFrame(map, frame.size_px, {0, 0},
+                       EncodedSampler<std::uint8_t, std::uint16_t>(encoded));
+  }
+  return SampleFrame(map, frame.size_px, {0, 0},
+                     EncodedSampler<std::uint16_t, std::uint32_t>(encoded));
 }
 
 bool IsInPhoto(const Photo& photo, const View& view, const cv::Point2d& sheet_mm, double height_mm,
