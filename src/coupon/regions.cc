@@ -3,11 +3,12 @@
 #include <fmt/format.h>
 
 #include <algorithm>
+#include <array>
 #include <cmath>
+#include <cstring>
 #include <vector>
 
 #include "base/error.h"
-#include "base/vectorize.h"
 
 namespace laygauge {
 namespace {
@@ -19,65 +20,108 @@ void RequireRange(const char* field, double value, double low, double high) {
   }
 }
 
-// One row of pixel centres, in mm: squared distances and insideness, for all columns at once.
-struct Row {
-  std::vector<float> x_mm;
-  std::vector<float> to_outline_mm2;  // squared
-  std::vector<float> to_hole_mm;      // to the nearest hole's edge; negative in the hole
-  std::vector<float> crossings_mm;    // where the row meets the outline, sorted
+// A stretch of a row, mm. The one without points has its ends the wrong way round.
+struct Interval {
+  double from_mm = INFINITY;
+  double to_mm = -INFINITY;
+  void Take(double x_mm) {
+    from_mm = std::min(from_mm, x_mm);
+    to_mm = std::max(to_mm, x_mm);
+  }
 };
 
-// Lowers `squares` to the squared distances of the row's pixels from a straight edge a -> b.
-LAYGAUGE_WIDE_VECTORS
-void NearEdge(const std::vector<float>& x_mm, float y_mm, const cv::Point2f& a,
-              const cv::Point2f& b, std::vector<float>& squares) {
-  const cv::Point2f along = b - a;
-  const float per_length2 = 1 / along.dot(along);
-  const float dy = y_mm - a.y;
-  const float* xs = x_mm.data();
-  float* out = squares.data();
-  for (size_t c = 0; c < x_mm.size(); ++c) {
-    const float dx = xs[c] - a.x;
-    const float t = std::min(std::max((dx * along.x + dy * along.y) * per_length2, 0.F), 1.F);
-    const float ex = dx - t * along.x;
-    const float ey = dy - t * along.y;
-    out[c] = std::min(out[c], ex * ex + ey * ey);
-  }
+// A circle's part of the row at y.
+Interval OfCircle(const cv::Point2d& center, double radius_mm, double y_mm) {
+  const double square = radius_mm * radius_mm - (y_mm - center.y) * (y_mm - center.y);
+  if (square < 0) return {};
+  return {center.x - std::sqrt(square), center.x + std::sqrt(square)};
 }
 
-// Lowers `distances` to those from a hole's edge.
-LAYGAUGE_WIDE_VECTORS
-void NearHole(const std::vector<float>& x_mm, float y_mm, const Hole& hole,
-              std::vector<float>& distances) {
-  const auto hole_x = static_cast<float>(hole.x_mm);
-  const float dy = y_mm - static_cast<float>(hole.y_mm);
-  const auto radius = static_cast<float>(hole.diameter_mm / 2);
-  const float* xs = x_mm.data();
-  float* out = distances.data();
-  for (size_t c = 0; c < x_mm.size(); ++c) {
-    const float dx = xs[c] - hole_x;
-    out[c] = std::min(out[c], std::sqrt(dx * dx + dy * dy) - radius);
+// What of the row lies within `reach_mm` of the straight edge a -> b: one stretch, as that is a
+// convex shape, of a circle round either end and a rectangle.
+Interval NearEdge(const cv::Point2d& a, const cv::Point2d& b, double reach_mm, double y_mm) {
+  Interval near = OfCircle(a, reach_mm, y_mm);
+  const Interval of_b = OfCircle(b, reach_mm, y_mm);
+  near = {std::min(near.from_mm, of_b.from_mm), std::max(near.to_mm, of_b.to_mm)};
+  const cv::Point2d along = b - a;
+  const cv::Point2d off = cv::Point2d(-along.y, along.x) * (reach_mm / cv::norm(along));
+  const std::array<cv::Point2d, 4> corners = {a + off, b + off, b - off, a - off};
+  for (size_t i = 0; i < corners.size(); ++i) {
+    const cv::Point2d& from = corners[i];
+    const cv::Point2d& to = corners[(i + 1) % corners.size()];
+    if ((from.y > y_mm) == (to.y > y_mm)) continue;
+    near.Take(from.x + (to.x - from.x) * (y_mm - from.y) / (to.y - from.y));
   }
+  return near;
 }
 
-void MeasureOutline(const std::vector<cv::Point2d>& outline, float y_mm, Row& row) {
-  std::fill(row.to_outline_mm2.begin(), row.to_outline_mm2.end(), 1e12F);
-  row.crossings_mm.clear();
-  for (size_t i = 0; i < outline.size(); ++i) {
-    const cv::Point2f a = outline[i];
-    const cv::Point2f b = outline[(i + 1) % outline.size()];
-    NearEdge(row.x_mm, y_mm, a, b, row.to_outline_mm2);
-    if ((a.y > y_mm) != (b.y > y_mm)) {
-      row.crossings_mm.push_back(a.x + (b.x - a.x) * (y_mm - a.y) / (b.y - a.y));
+// A row of the mask, drawn over from the innermost region to the outermost.
+class Row {
+ public:
+  Row(const CouponRegions& regions, int row, std::uint8_t* pixels)
+      : regions_(regions),
+        y_mm_((row - regions.origin_px.y) / regions.px_per_mm),
+        pixels_(pixels) {}
+
+  void Draw(const CouponDescription& coupon, const RegionOptions& options) {
+    Fill(0, regions_.regions.cols, Region::kField);
+    DrawNear(coupon, options.field_from_outline_mm, options.field_from_hole_mm, Region::kMargin);
+    DrawNear(coupon, coupon.wall_mm, coupon.wall_mm, Region::kWall);
+    for (const Hole& hole : coupon.holes) DrawRound(hole, 0, Region::kOff);
+    DrawOutside(coupon.outline_mm);
+  }
+
+ private:
+  void Fill(int begin, int end, Region region) {
+    if (begin < end) std::memset(pixels_ + begin, static_cast<int>(region), end - begin);
+  }
+
+  // Pixels whose centres lie in the interval, ends included but for rounding.
+  void Fill(const Interval& interval, Region region) {
+    constexpr double kRounding_px = 1e-6;
+    if (interval.from_mm > interval.to_mm) return;
+    const double from = interval.from_mm * regions_.px_per_mm + regions_.origin_px.x;
+    const double to = interval.to_mm * regions_.px_per_mm + regions_.origin_px.x;
+    const double columns = regions_.regions.cols;
+    Fill(static_cast<int>(std::ceil(std::clamp(from - kRounding_px, 0.0, columns))),
+         static_cast<int>(std::floor(std::clamp(to + kRounding_px, -1.0, columns - 1))) + 1,
+         region);
+  }
+
+  void DrawRound(const Hole& hole, double beyond_mm, Region region) {
+    Fill(OfCircle({hole.x_mm, hole.y_mm}, hole.diameter_mm / 2 + beyond_mm, y_mm_), region);
+  }
+
+  void DrawNear(const CouponDescription& coupon, double outline_reach_mm, double hole_reach_mm,
+                Region region) {
+    const auto& outline = coupon.outline_mm;
+    for (size_t i = 0; i < outline.size(); ++i) {
+      Fill(NearEdge(outline[i], outline[(i + 1) % outline.size()], outline_reach_mm, y_mm_),
+           region);
+    }
+    for (const Hole& hole : coupon.holes) DrawRound(hole, hole_reach_mm, region);
+  }
+
+  // Between the row's crossings with the outline, from outside to inside and back.
+  void DrawOutside(const std::vector<cv::Point2d>& outline) {
+    std::vector<double> crossings_mm = {-INFINITY};
+    for (size_t i = 0; i < outline.size(); ++i) {
+      const cv::Point2d& a = outline[i];
+      const cv::Point2d& b = outline[(i + 1) % outline.size()];
+      if ((a.y > y_mm_) == (b.y > y_mm_)) continue;
+      crossings_mm.push_back(a.x + (b.x - a.x) * (y_mm_ - a.y) / (b.y - a.y));
+    }
+    crossings_mm.push_back(INFINITY);
+    std::sort(crossings_mm.begin(), crossings_mm.end());
+    for (size_t i = 0; i + 1 < crossings_mm.size(); i += 2) {
+      Fill(Interval{crossings_mm[i], crossings_mm[i + 1]}, Region::kOff);
     }
   }
-  std::sort(row.crossings_mm.begin(), row.crossings_mm.end());
-}
 
-void MeasureHoles(const std::vector<Hole>& holes, float y_mm, Row& row) {
-  std::fill(row.to_hole_mm.begin(), row.to_hole_mm.end(), 1e6F);
-  for (const Hole& hole : holes) NearHole(row.x_mm, y_mm, hole, row.to_hole_mm);
-}
+  const CouponRegions& regions_;
+  double y_mm_;
+  std::uint8_t* pixels_;
+};
 
 }  // namespace
 
@@ -101,39 +145,10 @@ CouponRegions MakeRegions(const CouponDescription& coupon, const RegionOptions& 
       cv::Point2d((size.width - 1) / 2.0, (size.height - 1) / 2.0) - middle_mm * options.px_per_mm;
   result.regions.create(size, CV_8UC1);
 
-  Row row;
-  for (int c = 0; c < size.width; ++c) {
-    row.x_mm.push_back(static_cast<float>((c - result.origin_px.x) / options.px_per_mm));
-  }
-  row.to_outline_mm2.resize(row.x_mm.size());
-  row.to_hole_mm.resize(row.x_mm.size());
-  const auto wall = static_cast<float>(coupon.wall_mm);
-  const auto outline_gap = static_cast<float>(options.field_from_outline_mm);
-  const auto hole_gap = static_cast<float>(options.field_from_hole_mm);
   for (int r = 0; r < size.height; ++r) {
-    const auto y_mm = static_cast<float>((r - result.origin_px.y) / options.px_per_mm);
-    MeasureOutline(coupon.outline_mm, y_mm, row);
-    MeasureHoles(coupon.holes, y_mm, row);
-    auto* out = result.regions.ptr<std::uint8_t>(r);
-    size_t crossed = 0;
-    for (int c = 0; c < size.width; ++c) {
-      while (crossed < row.crossings_mm.size() && row.crossings_mm[crossed] < row.x_mm[c]) {
-        ++crossed;
-      }
-      const float outline_mm = std::sqrt(row.to_outline_mm2[c]);
-      const float hole_mm = row.to_hole_mm[c];
-      Region region = Region::kMargin;
-      if (crossed % 2 == 0 || hole_mm <= 0) {
-        region = Region::kOff;
-      } else if (outline_mm <= wall || hole_mm <= wall) {
-        region = Region::kWall;
-      } else if (outline_mm > outline_gap && hole_mm > hole_gap) {
-        region = Region::kField;
-        ++result.field_pixels;
-      }
-      out[c] = static_cast<std::uint8_t>(region);
-    }
+    Row(result, r, result.regions.ptr<std::uint8_t>(r)).Draw(coupon, options);
   }
+  result.field_pixels = cv::countNonZero(result.regions == static_cast<int>(Region::kField));
   return result;
 }
 

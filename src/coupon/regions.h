@@ -24,7 +24,7 @@ struct CouponRegions {
   int field_pixels = 0;
 };
 
-// From the distances of each pixel's centre to the outline and to the holes, in closed form. A
+// By the distances of each pixel's centre from the outline and from the holes, in closed form. A
 // pixel belongs to the wall up to and with wall_mm, to the field only beyond the options' lengths.
 [[nodiscard]] CouponRegions MakeRegions(const CouponDescription& coupon,
                                         const RegionOptions& options);

@@ -2,7 +2,10 @@
 
 #include <gtest/gtest.h>
 
+#include <algorithm>
 #include <cmath>
+#include <opencv2/imgproc.hpp>
+#include <vector>
 
 #include "base/error.h"
 
@@ -77,6 +80,46 @@ TEST(Regions, AnAngledOutlineIsCutWhereItIs) {
   // All but 3 mm along the sides; in the square at the inner corner a quarter circle is off.
   const double field = 34.0 * 14 + 14.0 * 20 + 9 - kPi * 9 / 4;
   EXPECT_NEAR(Area_mm2(regions, Region::kField), field, kAreaTolerance_mm2);
+}
+
+// What the pixel's centre, at `at_mm`, belongs to by OpenCV's distance from a polygon; `slack_mm`
+// is how far it is from belonging to another region.
+Region ByDistance(const CouponDescription& coupon, const cv::Point2f& at_mm, double& slack_mm) {
+  const std::vector<cv::Point2f> outline(coupon.outline_mm.begin(), coupon.outline_mm.end());
+  const double inside_mm = cv::pointPolygonTest(outline, at_mm, true);
+  double hole_mm = 1e6;
+  for (const Hole& hole : coupon.holes) {
+    hole_mm = std::min(hole_mm,
+                       std::hypot(at_mm.x - hole.x_mm, at_mm.y - hole.y_mm) - hole.diameter_mm / 2);
+  }
+  slack_mm =
+      std::min({std::abs(inside_mm), std::abs(inside_mm - coupon.wall_mm), std::abs(inside_mm - 3),
+                std::abs(hole_mm), std::abs(hole_mm - coupon.wall_mm), std::abs(hole_mm - 2)});
+  if (inside_mm < 0 || hole_mm < 0) return Region::kOff;
+  if (inside_mm < coupon.wall_mm || hole_mm < coupon.wall_mm) return Region::kWall;
+  return inside_mm < 3 || hole_mm < 2 ? Region::kMargin : Region::kField;
+}
+
+TEST(Regions, AgreeWithDistancesPixelByPixel) {
+  const std::vector<Hole> holes = {{-8, 9, 6}, {-9, -9, 3.2}};
+  const std::vector<std::vector<cv::Point2d>> outlines = {
+      {{-20, 17}, {0, -17}, {20, 17}},
+      {{-20, 20}, {0, 20}, {0, 0}, {20, 0}, {20, -20}, {-20, -20}},
+      {{-19, -3}, {2, -18}, {20, -14}, {3, 1}, {17, 16}, {-14, 19}}};
+  for (const auto& outline : outlines) {
+    const CouponDescription coupon = Coupon(outline, holes);
+    const CouponRegions regions = MakeRegions(coupon, {.px_per_mm = 7.3});
+    for (int y = 0; y < regions.regions.rows; ++y) {
+      for (int x = 0; x < regions.regions.cols; ++x) {
+        const cv::Point2d at_mm = (cv::Point2d(x, y) - regions.origin_px) / regions.px_per_mm;
+        double slack_mm = 0;
+        const Region expected = ByDistance(coupon, at_mm, slack_mm);
+        if (slack_mm < 1e-4) continue;  // the reference's single precision
+        ASSERT_EQ(regions.regions.at<std::uint8_t>(y, x), static_cast<int>(expected))
+            << at_mm << " of an outline of " << outline.size() << " corners";
+      }
+    }
+  }
 }
 
 TEST(Regions, OptionsAreChecked) {
