@@ -21,4 +21,6 @@ inline const EightFloats* EightAt(const float* first) {
   return reinterpret_cast<const EightFloats*>(first);
 }
 
+inline EightFloats* EightAt(float* first) { return reinterpret_cast<EightFloats*>(first); }
+
 }  // namespace laygauge

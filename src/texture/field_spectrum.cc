@@ -5,11 +5,14 @@
 #include <array>
 #include <cmath>
 #include <numbers>
+#include <numeric>
 #include <opencv2/imgproc.hpp>
 #include <utility>
 
 #include "base/error.h"
 #include "base/vectorize.h"
+#include "texture/bin_weights.h"
+#include "texture/tile_transform.h"
 
 namespace laygauge {
 namespace {
@@ -39,111 +42,120 @@ std::vector<int> TileStarts(int begin, int end, int side, double max_overlap) {
 
 struct WindowedTile {
   cv::Mat values;  // window times mask times (reflectance less its weighted mean)
-  double share = 0;
   double weight_sum = 0;
   double weight_squares = 0;
 };
 
-WindowedTile WindowTile(const Patch& patch, cv::Rect rect, const cv::Mat& window) {
-  WindowedTile tile{cv::Mat(rect.height, rect.width, CV_32FC1), 0, 0, 0};
-  cv::Mat weights(rect.height, rect.width, CV_32FC1);
-  double sum = 0;
-  double sum_weights = 0;
-  double sum_window = 0;
-  for (int y = 0; y < rect.height; ++y) {
-    const auto* relative = patch.relative.ptr<float>(rect.y + y) + rect.x;
-    const auto* region = patch.regions.ptr<std::uint8_t>(rect.y + y) + rect.x;
-    const auto* w = window.ptr<float>(y);
-    auto* weight = weights.ptr<float>(y);
-    float row_sum = 0;
-    float row_weights = 0;
-    float row_squares = 0;
-    float row_window = 0;
-    for (int x = 0; x < rect.width; ++x) {
-      const bool inside = region[x] == static_cast<std::uint8_t>(Region::kField);
-      weight[x] = inside ? w[x] : 0.0F;
-      row_sum += inside ? w[x] * relative[x] : 0.0F;
-      row_weights += weight[x];
-      row_squares += weight[x] * weight[x];
-      row_window += w[x];
-    }
-    sum += row_sum;
-    sum_weights += row_weights;
-    sum_window += row_window;
-    tile.weight_squares += row_squares;
+// Sums of columns, of one tile.
+struct ColumnSums {
+  explicit ColumnSums(int side) : values(side), weights(side), squares(side) {}
+  std::vector<float> values;
+  std::vector<float> weights;
+  std::vector<float> squares;
+};
+
+double Sum(const std::vector<float>& values) {
+  return std::accumulate(values.begin(), values.end(), 0.0);
+}
+
+// A row of window times mask, and its sums. (In one loop, compilers would branch at every pixel.)
+LAYGAUGE_WIDE_VECTORS
+void WeighRow(const float* relative, const std::uint8_t* region, const float* window, int side,
+              float* __restrict weights, ColumnSums& sums) {
+  for (int x = 0; x < side; ++x) {
+    weights[x] = region[x] == static_cast<std::uint8_t>(Region::kField) ? window[x] : 0.0F;
   }
-  tile.share = sum_weights / sum_window;
-  tile.weight_sum = sum_weights;
-  const auto mean = static_cast<float>(sum_weights > 0 ? sum / sum_weights : 0);
+  float* __restrict of_values = sums.values.data();
+  float* __restrict of_weights = sums.weights.data();
+  float* __restrict of_squares = sums.squares.data();
+  for (int x = 0; x < side; ++x) {
+    of_values[x] += weights[x] * (weights[x] > 0 ? relative[x] : 0.0F);
+    of_weights[x] += weights[x];
+    of_squares[x] += weights[x] * weights[x];
+  }
+}
+
+// `values` holds the weights and gets them times the relative reflectance less its mean.
+LAYGAUGE_WIDE_VECTORS
+void CentreRow(const float* relative, float mean, int side, float* values) {
+  for (int x = 0; x < side; ++x) {
+    values[x] *= (values[x] > 0 ? relative[x] : mean) - mean;
+  }
+}
+
+WindowedTile WindowTile(const Patch& patch, cv::Rect rect, const cv::Mat& window) {
+  WindowedTile tile{cv::Mat(rect.size(), CV_32FC1)};
+  ColumnSums sums(rect.width);
   for (int y = 0; y < rect.height; ++y) {
-    const auto* relative = patch.relative.ptr<float>(rect.y + y) + rect.x;
-    const auto* weight = weights.ptr<float>(y);
-    auto* value = tile.values.ptr<float>(y);
-    for (int x = 0; x < rect.width; ++x) {
-      value[x] = weight[x] > 0 ? weight[x] * (relative[x] - mean) : 0.0F;
-    }
+    WeighRow(patch.relative.ptr<float>(rect.y + y) + rect.x,
+             patch.regions.ptr<std::uint8_t>(rect.y + y) + rect.x, window.ptr<float>(y), rect.width,
+             tile.values.ptr<float>(y), sums);
+  }
+  tile.weight_sum = Sum(sums.weights);
+  tile.weight_squares = Sum(sums.squares);
+  const double mean = tile.weight_sum > 0 ? Sum(sums.values) / tile.weight_sum : 0;
+  for (int y = 0; y < rect.height; ++y) {
+    CentreRow(patch.relative.ptr<float>(rect.y + y) + rect.x, static_cast<float>(mean), rect.width,
+              tile.values.ptr<float>(y));
   }
   return tile;
 }
 
-// Squared magnitudes, times `scale`, of the left half plane of a real image's spectrum, side x
-// side, `side` even, in OpenCV's packed form: real and imaginary parts side by side, but for the
-// first and last column, which stand one below the other and hold half of their symmetric column.
-cv::Mat HalfPower(const cv::Mat& packed, double scale) {
-  const int side = packed.rows;
+// Squared magnitudes times `scale`.
+cv::Mat Power(const cv::Mat& transform, double scale) {
   const auto factor = static_cast<float>(scale);
-  const auto square = [factor](float re, float im) { return factor * (re * re + im * im); };
-  cv::Mat power(side, side / 2 + 1, CV_32FC1);
-  for (int y = 0; y < side; ++y) {
-    const auto* in = packed.ptr<float>(y);
+  cv::Mat power(transform.size(), CV_32FC1);
+  for (int y = 0; y < power.rows; ++y) {
+    const auto* in = transform.ptr<cv::Vec2f>(y);
     auto* out = power.ptr<float>(y);
-    for (int x = 1; x < side / 2; ++x) out[x] = square(in[2 * x - 1], in[2 * x]);
-  }
-  for (const auto& [from, to] : {std::pair{0, 0}, std::pair{side - 1, side / 2}}) {
-    power.at<float>(0, to) = square(packed.at<float>(0, from), 0);
-    power.at<float>(side / 2, to) = square(packed.at<float>(side - 1, from), 0);
-    for (int y = 1; y < side / 2; ++y) {
-      power.at<float>(y, to) =
-          square(packed.at<float>(2 * y - 1, from), packed.at<float>(2 * y, from));
-      power.at<float>(side - y, to) = power.at<float>(y, to);
+    for (int x = 0; x < power.cols; ++x) {
+      out[x] = factor * (in[x][0] * in[x][0] + in[x][1] * in[x][1]);
     }
   }
   return power;
 }
 
-// A wave along x: its cosine and sine at a tile's columns.
-struct RowWave {
-  std::vector<float> cosine;
-  std::vector<float> sine;
-};
+// The bins about a frequency and where they are found: those beyond the half plane are conjugates.
+class BinsAbout {
+ public:
+  BinsAbout(cv::Point2d frequency_bins, int side)
+      : side_(side), x_(WeighBins(frequency_bins.x)), y_(WeighBins(frequency_bins.y)) {
+    for (std::size_t i = 0; i < BinWeights::kBins; ++i) {
+      const int kx = Wrapped(x_.first + static_cast<int>(i));
+      mirrored_[i] = kx > side / 2;
+      column_[i] = mirrored_[i] ? side - kx : kx;
+      sign_[i] = mirrored_[i] ? -1.0F : 1.0F;
+    }
+  }
 
-// Sums of two neighbouring rows times the wave: cosine and sine of the first, then of the second.
-LAYGAUGE_WIDE_VECTORS
-std::array<float, 4> CorrelateRows(const float* row, int side, const RowWave& wave) {
-  constexpr int kWide = 8;
-  const float* next = row + side;
-  const float* cosine = wave.cosine.data();
-  const float* sine = wave.sine.data();
-  EightFloats sums[4] = {};
-  int x = 0;
-  for (; x + kWide <= side; x += kWide) {
-    sums[0] += *EightAt(row + x) * *EightAt(cosine + x);
-    sums[1] += *EightAt(row + x) * *EightAt(sine + x);
-    sums[2] += *EightAt(next + x) * *EightAt(cosine + x);
-    sums[3] += *EightAt(next + x) * *EightAt(sine + x);
+  [[nodiscard]] std::complex<double> Sum(const cv::Mat& transform) const {
+    std::complex<double> sum = 0;
+    for (std::size_t j = 0; j < BinWeights::kBins; ++j) {
+      const int ky = Wrapped(y_.first + static_cast<int>(j));
+      const auto* row = transform.ptr<cv::Vec2f>(ky);
+      const auto* mirror = transform.ptr<cv::Vec2f>(Wrapped(-ky));
+      float re = 0;
+      float im = 0;
+      for (std::size_t i = 0; i < BinWeights::kBins; ++i) {
+        const cv::Vec2f& bin = (mirrored_[i] ? mirror : row)[column_[i]];
+        re += x_.weights[i] * bin[0];
+        im += sign_[i] * x_.weights[i] * bin[1];
+      }
+      sum += std::complex<double>(y_.weights[j] * re, y_.weights[j] * im);
+    }
+    return sum;
   }
-  std::array<float, 4> totals{};
-  for (size_t k = 0; k < 4; ++k) {
-    for (int i = 0; i < kWide; ++i) totals[k] += sums[k][i];
-  }
-  for (; x < side; ++x) {
-    totals[0] += row[x] * cosine[x];
-    totals[1] += row[x] * sine[x];
-    totals[2] += next[x] * cosine[x];
-    totals[3] += next[x] * sine[x];
-  }
-  return totals;
-}
+
+ private:
+  [[nodiscard]] int Wrapped(int k) const { return (k % side_ + side_) % side_; }
+
+  int side_;
+  BinWeights x_;
+  BinWeights y_;
+  std::array<bool, BinWeights::kBins> mirrored_{};
+  std::array<int, BinWeights::kBins> column_{};
+  std::array<float, BinWeights::kBins> sign_{};
+};
 
 }  // namespace
 
@@ -172,23 +184,22 @@ FieldSpectrum MeasureFieldSpectrum(const Patch& patch, const FieldSpectrumOption
   const cv::Rect bounds = cv::boundingRect(patch.regions == static_cast<int>(Region::kField));
   const cv::Mat hann(HannWindow(side), true);
   const cv::Mat window = hann * hann.t();
-  cv::Mat spectrum;
+  const double whole = cv::sum(window)[0];
+  TileTransform transform(side);
   for (const int y : TileStarts(bounds.y, bounds.br().y, side, options.max_overlap)) {
     for (const int x : TileStarts(bounds.x, bounds.br().x, side, options.max_overlap)) {
-      const WindowedTile tile = WindowTile(patch, {x, y, side, side}, window);
-      if (tile.share < options.min_field_share) {
+      const WindowedTile windowed = WindowTile(patch, {x, y, side, side}, window);
+      if (windowed.weight_sum < options.min_field_share * whole) {
         continue;
       }
-      cv::dft(tile.values, spectrum);
-      // Parseval: the plane's sum of |X|^2 is side^2 times the sum of squared weighted values.
-      const double scale = 1.0 / (static_cast<double>(side) * side * tile.weight_squares);
       const cv::Point2d centre(x + (side - 1) / 2.0, y + (side - 1) / 2.0);
-      result.tiles.push_back({{x, y},
-                              patch.CouponFromPixel(centre),
-                              tile.values,
-                              tile.weight_sum,
-                              HalfPower(spectrum, scale)});
-      result.power += result.tiles.back().power;
+      SpectrumTile tile{{x, y}, patch.CouponFromPixel(centre), windowed.weight_sum, {}, {}};
+      transform.Apply(windowed.values, tile.transform);
+      // Parseval: the plane's sum of |X|^2 is side^2 times the sum of squared weighted values.
+      const double scale = 1.0 / (static_cast<double>(side) * side * windowed.weight_squares);
+      tile.power = Power(tile.transform, scale);
+      result.power += tile.power;
+      result.tiles.push_back(std::move(tile));
     }
   }
   if (!result.tiles.empty()) {
@@ -199,34 +210,19 @@ FieldSpectrum MeasureFieldSpectrum(const Patch& patch, const FieldSpectrumOption
 
 std::vector<std::vector<std::complex<double>>> DemodulateTiles(
     const FieldSpectrum& spectrum, const std::vector<cv::Point2d>& frequencies_per_mm) {
-  using Complex = std::complex<double>;
-  const int side = spectrum.side_px;
-  const double centre = (side - 1) / 2.0;
-  const size_t count = frequencies_per_mm.size();
-  std::vector<RowWave> along_x(count);
-  std::vector<std::vector<Complex>> along_y(count);
-  for (size_t k = 0; k < count; ++k) {
-    const cv::Point2d cycles = frequencies_per_mm[k] / spectrum.px_per_mm;
-    for (int i = 0; i < side; ++i) {
-      const double turn = 2 * std::numbers::pi * (i - centre);
-      along_x[k].cosine.push_back(static_cast<float>(std::cos(turn * cycles.x)));
-      along_x[k].sine.push_back(static_cast<float>(std::sin(turn * cycles.x)));
-      along_y[k].push_back(std::polar(1.0, -turn * cycles.y));
-    }
+  std::vector<BinsAbout> bins;
+  for (const cv::Point2d& f : frequencies_per_mm) {
+    bins.emplace_back(f / spectrum.bin_per_mm, spectrum.side_px);
   }
-  std::vector<std::vector<Complex>> amplitudes;
+  // Where a tile's phases count from: half a pixel beyond its centre.
+  const cv::Point2d half_pixel = cv::Point2d(0.5, 0.5) / spectrum.px_per_mm;
+  std::vector<std::vector<std::complex<double>>> amplitudes;
   for (const SpectrumTile& tile : spectrum.tiles) {
-    auto& sums = amplitudes.emplace_back(count);
-    for (int y = 0; y < side; y += 2) {
-      for (size_t k = 0; k < count; ++k) {
-        const auto [c0, s0, c1, s1] = CorrelateRows(tile.values.ptr<float>(y), side, along_x[k]);
-        const auto at = static_cast<size_t>(y);
-        sums[k] += along_y[k][at] * Complex(c0, -s0) + along_y[k][at + 1] * Complex(c1, -s1);
-      }
-    }
-    for (size_t k = 0; k < count; ++k) {
-      const double turn = 2 * std::numbers::pi * frequencies_per_mm[k].dot(tile.centre_mm);
-      sums[k] *= 2 / tile.weight_sum * std::polar(1.0, -turn);
+    auto& sums = amplitudes.emplace_back();
+    for (std::size_t k = 0; k < bins.size(); ++k) {
+      const double turn =
+          2 * std::numbers::pi * frequencies_per_mm[k].dot(tile.centre_mm + half_pixel);
+      sums.push_back(bins[k].Sum(tile.transform) * std::polar(2 / tile.weight_sum, -turn));
     }
   }
   return amplitudes;
