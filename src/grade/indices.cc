@@ -8,7 +8,7 @@ namespace laygauge {
 std::span<const IndexPart> RoughnessParts() {
   static constexpr std::array<IndexPart, 3> parts{{
       {"line_contrast", 0.15},
-      {"aperiodic_roughness", 0.075},
+      {"aperiodic_roughness", 0.106},
       {"waviness", 0.04},
   }};
   return parts;

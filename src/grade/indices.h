@@ -14,7 +14,8 @@ struct IndexPart {
   double plain_level = 1;  // in the feature's unit
 };
 
-// Periodic, aperiodic and waviness: what is left without any defect.
+// Periodic, aperiodic and waviness: what is left without any defect. The first two share a band of
+// wavelengths, so that their levels are one root mean square: an amplitude of 0.15 is 0.106.
 [[nodiscard]] std::span<const IndexPart> RoughnessParts();
 // Gaps, ridges, scars, blobs, wall gaps, failure.
 [[nodiscard]] std::span<const IndexPart> DefectParts();

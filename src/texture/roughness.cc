@@ -138,6 +138,9 @@ void RoughnessOptions::Check() const {
         fmt::format("line_halfwidth_bins is {}: it must be 2 at least, the Hann window's lobe",
                     line_halfwidth_bins));
   }
+  if (!(share_floor > 0)) {
+    throw BadOption(fmt::format("share_floor is {}: it must be above 0", share_floor));
+  }
 }
 
 std::optional<Roughness> MeasureRoughness(const FieldSpectrum& spectrum,
@@ -156,14 +159,14 @@ std::optional<Roughness> MeasureRoughness(const FieldSpectrum& spectrum,
       noise_sd * noise_sd * bins / (static_cast<double>(spectrum.side_px) * spectrum.side_px);
   std::vector<double> aperiodic;
   std::vector<double> shares;
+  const double floor = options.share_floor * options.share_floor;
   double total = 0;
   for (const SpectrumTile& tile : spectrum.tiles) {
     const Parts parts = SplitPower(tile.power, map);
     total += std::max(0.0, parts.total - noise);
     aperiodic.push_back(std::max(0.0, parts.aperiodic - noise));
-    shares.push_back(parts.total > noise
-                         ? (parts.total - std::max(parts.aperiodic, noise)) / (parts.total - noise)
-                         : 0);
+    const double lines_power = std::max(0.0, parts.total - std::max(parts.aperiodic, noise));
+    shares.push_back(lines_power / (std::max(0.0, parts.total - noise) + floor));
   }
   const double count = static_cast<double>(spectrum.tiles.size());
   Roughness result;
@@ -173,14 +176,14 @@ std::optional<Roughness> MeasureRoughness(const FieldSpectrum& spectrum,
   result.aperiodic_sd = result.aperiodic > 0 ? StandardDeviation(aperiodic) / std::sqrt(count) /
                                                    (2 * result.aperiodic)
                                              : 0;
-  result.line_share = total > 0 ? std::max(0.0, 1 - Mean(aperiodic) * count / total) : 0;
+  result.line_share = std::max(0.0, total / count - Mean(aperiodic)) / (total / count + floor);
   result.line_share_sd = StandardDeviation(shares) / std::sqrt(count);
   return result;
 }
 
 Metric RoughnessMetric() {
   return {"roughness",
-          1,
+          2,
           {{"aperiodic_roughness",
             "root mean square of what is no line, wavelengths 0.2 to 2 mm, of mean reflectance"},
            {"line_power_share",

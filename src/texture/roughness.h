@@ -10,7 +10,10 @@ struct RoughnessOptions {
   double min_wavelength_mm = 0.2;
   double max_wavelength_mm = 2.0;
   double line_halfwidth_bins =
-      2.5;             // of the spots taken out: the Hann window's lobe and a half bin
+      2.5;  // of the spots taken out: the Hann window's lobe and a half bin
+  // Added to the band's root mean square, in quadrature, where the lines' share is taken of it:
+  // four times what smooth tops show, which are no more regular for being faint.
+  double share_floor = 0.02;
   void Check() const;  // throws BadOption: field, value, rule
 };
 
@@ -18,7 +21,8 @@ struct Roughness {
   double total = 0;         // root mean square of the band, fraction of mean reflectance
   double aperiodic = 0;     // of what is no line
   double aperiodic_sd = 0;  // from the tiles
-  double line_share = 0;    // of the band's power that lies in the lines' spots, 0..1
+  // Of the band's power that lies in the lines' spots: lines / (band + share_floor^2), 0..1.
+  double line_share = 0;
   double line_share_sd = 0;
 };
 

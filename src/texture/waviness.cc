@@ -94,6 +94,9 @@ void WavinessOptions::Check() const {
     throw BadOption(fmt::format("cell_mm is {}: it must be above 0, at most a quarter of {} mm",
                                 cell_mm, min_wavelength_mm));
   }
+  if (!(floor > 0)) {
+    throw BadOption(fmt::format("floor is {}: it must be above 0", floor));
+  }
 }
 
 Expected<Waviness> MeasureWaviness(const Patch& patch, const WavinessOptions& options) {
@@ -127,15 +130,20 @@ Expected<Waviness> MeasureWaviness(const Patch& patch, const WavinessOptions& op
       variances.push_back(sums[part] / weights[part]);
     }
   }
-  const double rms = std::sqrt(sum / weight);
+  const double variance = sum / weight;
+  const double noise = options.floor * options.floor;
+  const double rms = std::sqrt(variance) * variance / (variance + noise);
   const double sd_of_variance =
       StandardDeviation(variances) / std::sqrt(static_cast<double>(variances.size()));
-  return Waviness{rms, rms > 0 ? sd_of_variance / (2 * rms) : 0};
+  // The derivative of v^1.5 / (v + n) by v.
+  const double slope =
+      std::sqrt(variance) * (0.5 * variance + 1.5 * noise) / std::pow(variance + noise, 2);
+  return Waviness{rms, slope * sd_of_variance};
 }
 
 Metric WavinessMetric() {
   return {"waviness",
-          1,
+          2,
           {{"waviness", "root mean square of waves of 2 to 10 mm, of mean reflectance"}},
           &Measure};
 }

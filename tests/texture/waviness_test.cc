@@ -30,6 +30,19 @@ TEST(Waviness, TransmissionOfWaves) {
   }
 }
 
+// What coding leaves on a smooth top, 0.0024 at most, is no waviness: waves of that strength shrink
+// by 0.0024^2 / (0.0024^2 + 0.002^2) = 0.59, of half of it by 0.26; strong ones keep all of it. The
+// ratio of two waves of one length is free of what the filters pass.
+TEST(Waviness, ShrinksWhatIsNoMoreThanItsFloor) {
+  const double strong = MeasureWaviness(Wave(4, 0.2))->rms;
+  for (const double rms : {0.0024, 0.0012}) {
+    const Expected<Waviness> faint = MeasureWaviness(Wave(4, 0.2 * rms / strong));
+    const double want = rms * rms * rms / (rms * rms + 0.002 * 0.002);
+    EXPECT_NEAR(faint->rms, want, 0.01 * want) << rms;
+    EXPECT_GT(faint->sd, 0);
+  }
+}
+
 // Uneven light is no waviness: a polynomial of second order is taken off whole.
 TEST(Waviness, IgnoresForm) {
   Patch patch = RenderLines({.first = 0});
@@ -57,6 +70,7 @@ TEST(Waviness, NeedsAFieldAsWideAsItsWaves) {
   EXPECT_FALSE(MeasureWaviness(patch));
   EXPECT_THROW((WavinessOptions{.min_wavelength_mm = 11}.Check()), BadOption);
   EXPECT_THROW((WavinessOptions{.cell_mm = 1}.Check()), BadOption);
+  EXPECT_THROW((WavinessOptions{.floor = 0}.Check()), BadOption);
 }
 
 }  // namespace
