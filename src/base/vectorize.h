@@ -17,6 +17,13 @@ namespace laygauge {
 // sums a compiler may not rearrange by itself.
 using EightFloats = float __attribute__((vector_size(32), aligned(4), may_alias));
 
+using EightInts = int __attribute__((vector_size(32)));
+
+// Eight bytes as whole numbers.
+inline void ReadEight(const unsigned char* first, EightInts& out) {
+  for (int i = 0; i < 8; ++i) out[i] = first[i];
+}
+
 inline const EightFloats* EightAt(const float* first) {
   return reinterpret_cast<const EightFloats*>(first);
 }

@@ -4,8 +4,10 @@
 
 #include <algorithm>
 #include <cmath>
+#include <cstdint>
 #include <opencv2/core.hpp>
 
+#include "base/vectorize.h"
 #include "coupon/equalizing_kernel.h"
 
 namespace laygauge {
@@ -31,6 +33,24 @@ LocalSpread SpreadOfPatch(const PatchPlace& place) {
   return spread;
 }
 
+LAYGAUGE_WIDE_VECTORS
+double FieldSum(const float* values, const std::uint8_t* regions, int count) {
+  constexpr int kField = static_cast<int>(Region::kField);
+  constexpr int kLanes = 8;
+  const EightFloats none = {};
+  EightFloats sums = {};
+  int i = 0;
+  for (; i + kLanes <= count; i += kLanes) {
+    EightInts eight;
+    ReadEight(regions + i, eight);
+    sums += eight == kField ? *EightAt(values + i) : none;
+  }
+  double sum = 0;
+  for (int lane = 0; lane < kLanes; ++lane) sum += sums[lane];
+  for (; i < count; ++i) sum += regions[i] == kField ? values[i] : 0;
+  return sum;
+}
+
 }  // namespace
 
 Expected<Patch> Equalize(const Patch& patch, const PatchPlace& place,
@@ -52,9 +72,11 @@ Expected<Patch> Equalize(const Patch& patch, const PatchPlace& place,
   const SeparableFilter filter =
       DesignEqualizer(spread, patch.px_per_mm, options.working_blur_sd_mm, options.max_gain);
   Patch equalized = patch;
-  equalized.relative = filter.Apply(patch.relative);
-  const cv::Mat field = patch.regions == static_cast<int>(Region::kField);
-  const double mean = cv::mean(equalized.relative, field)[0];
+  double sum = 0;
+  equalized.relative = filter.Apply(patch.relative, [&](const float* row, int y) {
+    sum += FieldSum(row, patch.regions.ptr<std::uint8_t>(y), patch.regions.cols);
+  });
+  const double mean = sum / cv::countNonZero(patch.regions == static_cast<int>(Region::kField));
   equalized.relative /= mean;
   equalized.level = patch.level * mean;
   equalized.blur_sd_mm = options.working_blur_sd_mm;

@@ -4,10 +4,13 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
+#include <cstring>
 #include <functional>
 #include <limits>
 #include <numbers>
-#include <opencv2/imgproc.hpp>
+#include <vector>
+
+#include "base/vectorize.h"
 
 namespace laygauge {
 namespace {
@@ -32,19 +35,22 @@ struct HaloUndoing {
 HaloUndoing FitHaloUndoing(double sharpening, double ratio) {
   constexpr int kSteps = 120;
   constexpr double kReach = 2.5;  // of sqrt(u), the frequency: h = 0.002
+  std::array<double, kSteps> u{};
+  std::array<double, kSteps> exact{};
+  std::array<double, kSteps> weight{};
+  for (size_t i = 0; i < kSteps; ++i) {
+    u[i] = Square(kReach * static_cast<double>(i) / (kSteps - 1));
+    exact[i] = 1 / (1 + sharpening * (1 - std::exp(-u[i])));
+    weight[i] = std::exp(-ratio * u[i]);
+  }
   HaloUndoing best;
   double best_error = std::numeric_limits<double>::infinity();
   for (double power = 1; power <= 1 + 2 * sharpening + 0.3; power += 0.02) {
     double product = 0;
     double square = 0;
-    std::array<double, kSteps> exact{};
     std::array<double, kSteps> halo{};
-    std::array<double, kSteps> weight{};
     for (size_t i = 0; i < kSteps; ++i) {
-      const double u = Square(kReach * static_cast<double>(i) / (kSteps - 1));
-      exact[i] = 1 / (1 + sharpening * (1 - std::exp(-u)));
-      halo[i] = std::exp(-power * u);
-      weight[i] = std::exp(-ratio * u);
+      halo[i] = std::exp(-power * u[i]);
       product += Square(weight[i]) * (exact[i] - halo[i]) * (1 - halo[i]);
       square += Square(weight[i] * (1 - halo[i]));
     }
@@ -62,13 +68,20 @@ HaloUndoing FitHaloUndoing(double sharpening, double ratio) {
   return best;
 }
 
-// A symmetric filter's transfer at f cycles a sample: taps[0] + 2 sum taps[n] cos(2 pi f n).
-double TransferOfTaps(const Eigen::VectorXd& taps, double f) {
-  double sum = taps[0];
-  for (Eigen::Index n = 1; n < taps.size(); ++n) {
-    sum += 2 * taps[n] * std::cos(2 * std::numbers::pi * f * static_cast<double>(n));
+constexpr Eigen::Index kMaxRadius = 20;
+
+// What each tap of a symmetric filter, from the middle outwards, adds to its transfer at `count`
+// frequencies from 0 to half the sampling rate: 1, then 2 cos(2 pi f n).
+Eigen::MatrixXd TapWaves(Eigen::Index count) {
+  Eigen::MatrixXd waves(count, kMaxRadius + 1);
+  for (Eigen::Index k = 0; k < count; ++k) {
+    waves(k, 0) = 1;
+    for (Eigen::Index tap = 1; tap <= kMaxRadius; ++tap) {
+      waves(k, tap) = 2 * std::cos(std::numbers::pi * static_cast<double>(k * tap) /
+                                   static_cast<double>(count - 1));
+    }
   }
-  return sum;
+  return waves;
 }
 
 // A filter's transfer to be approached, and how much of each frequency the photo shows: what it
@@ -78,38 +91,41 @@ struct WantedTransfer {
   std::function<double(double)> shown;     // 0..1
 };
 
-// The taps from the middle outwards, by least squares at frequencies up to half the sampling rate.
-Eigen::VectorXd FitTaps(const WantedTransfer& wanted, double samples_per_mm, Eigen::Index radius) {
-  constexpr Eigen::Index kFrequencies = 48;
-  Eigen::MatrixXd waves(kFrequencies, radius + 1);
-  Eigen::VectorXd values(kFrequencies);
-  for (Eigen::Index k = 0; k < kFrequencies; ++k) {
-    const double f = 0.5 * static_cast<double>(k) / (kFrequencies - 1);  // cycles a sample
-    const double weight = std::max(0.02, wanted.shown(f * samples_per_mm));
-    values[k] = weight * wanted.transfer(f * samples_per_mm);
-    waves(k, 0) = weight;
-    for (Eigen::Index tap = 1; tap <= radius; ++tap) {
-      waves(k, tap) = 2 * weight * std::cos(2 * std::numbers::pi * f * static_cast<double>(tap));
-    }
+// Values of a function of cycles a mm at `count` frequencies from 0 to half the sampling rate.
+Eigen::VectorXd AtFrequencies(const std::function<double(double)>& function, double samples_per_mm,
+                              Eigen::Index count) {
+  Eigen::VectorXd values(count);
+  for (Eigen::Index k = 0; k < count; ++k) {
+    values[k] =
+        function(0.5 * samples_per_mm * static_cast<double>(k) / static_cast<double>(count - 1));
   }
-  const Eigen::VectorXd taps = (waves.transpose() * waves).ldlt().solve(waves.transpose() * values);
-  return taps / TransferOfTaps(taps, 0);  // what is uniform stays as bright as it is
+  return values;
 }
 
-// The shortest symmetric filter that is as wanted, in what it makes of the photo.
+// The shortest symmetric filter that is as wanted, in what it makes of the photo. Its taps by least
+// squares; what is uniform stays as bright as it is.
 cv::Mat DesignTaps(const WantedTransfer& wanted, double samples_per_mm) {
   constexpr double kTolerance = 0.002;
-  constexpr Eigen::Index kMaxRadius = 20;
+  constexpr Eigen::Index kFitted = 48;
+  constexpr Eigen::Index kChecked = 41;
+  static const Eigen::MatrixXd fitted_waves = TapWaves(kFitted);
+  static const Eigen::MatrixXd checked_waves = TapWaves(kChecked);
+  const Eigen::VectorXd weights =
+      AtFrequencies(wanted.shown, samples_per_mm, kFitted).cwiseMax(0.02);
+  const Eigen::VectorXd values =
+      weights.cwiseProduct(AtFrequencies(wanted.transfer, samples_per_mm, kFitted));
+  const Eigen::MatrixXd waves = weights.asDiagonal() * fitted_waves;
+  const Eigen::MatrixXd normal = waves.transpose() * waves;
+  const Eigen::VectorXd right = waves.transpose() * values;
+  const Eigen::VectorXd checked = AtFrequencies(wanted.transfer, samples_per_mm, kChecked);
+  const Eigen::VectorXd shown = AtFrequencies(wanted.shown, samples_per_mm, kChecked);
   Eigen::VectorXd taps;
   for (Eigen::Index radius = 1; radius <= kMaxRadius; ++radius) {
-    taps = FitTaps(wanted, samples_per_mm, radius);
-    double error = 0;
-    for (int k = 1; k <= 40; ++k) {
-      const double f = 0.5 * k / 40;
-      const double miss = TransferOfTaps(taps, f) - wanted.transfer(f * samples_per_mm);
-      error = std::max(error, std::abs(miss) * wanted.shown(f * samples_per_mm));
-    }
-    if (error <= kTolerance) break;
+    const Eigen::Index count = radius + 1;
+    taps = normal.topLeftCorner(count, count).ldlt().solve(right.head(count));
+    taps /= checked_waves.row(0).head(count).dot(taps);
+    const Eigen::VectorXd miss = checked_waves.leftCols(count) * taps - checked;
+    if (miss.cwiseAbs().cwiseProduct(shown).maxCoeff() <= kTolerance) break;
   }
   const auto radius = static_cast<int>(taps.size()) - 1;
   cv::Mat result(2 * radius + 1, 1, CV_32FC1);
@@ -124,24 +140,129 @@ double SoftlyLimited(double value, double limit) {
   return value / std::pow(1 + std::pow(value / limit, 8), 1.0 / 8);
 }
 
-}  // namespace
+// A symmetric filter's two samples at one distance, and their weight; the middle one is a pair of
+// its own, at half weight.
+struct TapPair {
+  const float* first;
+  const float* second;
+  float tap;
+};
 
-cv::Mat SeparableFilter::Apply(const cv::Mat& image) const {
-  constexpr int kRows = 128;  // strips of so many stay in the cache from term to term
-  cv::Mat sum(image.size(), CV_32FC1);
-  cv::Mat part;
-  for (int y = 0; y < image.rows; y += kRows) {
-    const cv::Range rows(y, std::min(y + kRows, image.rows));
-    const cv::Mat strip = image.rowRange(rows);  // filters see the rows beyond it
-    cv::Mat out = sum.rowRange(rows);
-    for (const Term& term : terms) {
-      const bool is_first = &term == &terms.front();
-      cv::sepFilter2D(strip, is_first ? out : part, CV_32F, term.row, term.column, {-1, -1}, 0,
-                      cv::BORDER_REFLECT_101);
-      if (!is_first) out += part;
+LAYGAUGE_WIDE_VECTORS
+void SumPairs(const std::vector<TapPair>& pairs, int count, float* out) {
+  int x = 0;
+  for (; x + 32 <= count; x += 32) {
+    EightFloats a = {};
+    EightFloats b = {};
+    EightFloats c = {};
+    EightFloats d = {};
+    for (const TapPair& pair : pairs) {
+      const float* first = pair.first + x;
+      const float* second = pair.second + x;
+      a += pair.tap * (*EightAt(first) + *EightAt(second));
+      b += pair.tap * (*EightAt(first + 8) + *EightAt(second + 8));
+      c += pair.tap * (*EightAt(first + 16) + *EightAt(second + 16));
+      d += pair.tap * (*EightAt(first + 24) + *EightAt(second + 24));
+    }
+    *EightAt(out + x) = a;
+    *EightAt(out + x + 8) = b;
+    *EightAt(out + x + 16) = c;
+    *EightAt(out + x + 24) = d;
+  }
+  for (; x + 8 <= count; x += 8) {
+    EightFloats sum = {};
+    for (const TapPair& pair : pairs) {
+      sum += pair.tap * (*EightAt(pair.first + x) + *EightAt(pair.second + x));
+    }
+    *EightAt(out + x) = sum;
+  }
+  for (; x < count; ++x) {
+    float sum = 0;
+    for (const TapPair& pair : pairs) sum += pair.tap * (pair.first[x] + pair.second[x]);
+    out[x] = sum;
+  }
+}
+
+// The taps of a symmetric kernel from the middle outwards, the middle one halved.
+std::vector<float> HalfOf(const cv::Mat& kernel) {
+  const float* middle = kernel.ptr<float>() + kernel.total() / 2;
+  std::vector<float> taps(middle, middle + kernel.total() / 2 + 1);
+  taps[0] /= 2;
+  return taps;
+}
+
+// One term on its way down a picture: the last few rows, filtered along.
+class TermRows {
+ public:
+  TermRows(const SeparableFilter::Term& term, const cv::Size& size)
+      : along_(HalfOf(term.row)),
+        down_(HalfOf(term.column)),
+        size_(size),
+        padded_(size.width + 2 * (along_.size() - 1)),
+        rows_(static_cast<int>(2 * down_.size() - 1), size.width, CV_32FC1) {
+    const int reach = static_cast<int>(down_.size()) - 1;
+    next_ = -reach;
+  }
+
+  // Filters rows until those round `y` are there.
+  void Advance(const cv::Mat& image, int y) {
+    const int reach = static_cast<int>(down_.size()) - 1;
+    for (; next_ <= y + reach; ++next_) FilterAlong(image, next_);
+  }
+
+  // What the filtered rows round `y` add to it.
+  void AddPairs(int y, std::vector<TapPair>& pairs) {
+    for (int k = 0; k < static_cast<int>(down_.size()); ++k) {
+      pairs.push_back({RowAt(y - k), RowAt(y + k), down_[k]});
     }
   }
-  return sum;
+
+ private:
+  float* RowAt(int y) { return rows_.ptr<float>((y + rows_.rows) % rows_.rows); }
+
+  void FilterAlong(const cv::Mat& image, int y) {
+    const int reach = static_cast<int>(along_.size()) - 1;
+    const auto* row =
+        image.ptr<float>(cv::borderInterpolate(y, size_.height, cv::BORDER_REFLECT_101));
+    float* middle = padded_.data() + reach;
+    std::copy(row, row + size_.width, middle);
+    for (int k = 1; k <= reach; ++k) {
+      middle[-k] = row[cv::borderInterpolate(-k, size_.width, cv::BORDER_REFLECT_101)];
+      middle[size_.width - 1 + k] =
+          row[cv::borderInterpolate(size_.width - 1 + k, size_.width, cv::BORDER_REFLECT_101)];
+    }
+    pairs_.clear();
+    for (int k = 0; k <= reach; ++k) pairs_.push_back({middle - k, middle + k, along_[k]});
+    SumPairs(pairs_, size_.width, RowAt(y));
+  }
+
+  std::vector<float> along_;
+  std::vector<float> down_;
+  cv::Size size_;
+  std::vector<float> padded_;  // the row that is filtered, mirrored at its ends
+  cv::Mat rows_;               // row y of the picture at y modulo the number of rows
+  int next_ = 0;               // row that is not filtered yet
+  std::vector<TapPair> pairs_;
+};
+
+}  // namespace
+
+cv::Mat SeparableFilter::Apply(const cv::Mat& image,
+                               const std::function<void(const float* row, int y)>& finished) const {
+  std::vector<TermRows> parts;
+  for (const Term& term : terms) parts.emplace_back(term, image.size());
+  cv::Mat out(image.size(), CV_32FC1);
+  std::vector<TapPair> pairs;
+  for (int y = 0; y < image.rows; ++y) {
+    pairs.clear();
+    for (TermRows& part : parts) {
+      part.Advance(image, y);
+      part.AddPairs(y, pairs);
+    }
+    SumPairs(pairs, image.cols, out.ptr<float>(y));
+    if (finished) finished(out.ptr<float>(y), y);
+  }
+  return out;
 }
 
 SeparableFilter DesignEqualizer(const LocalSpread& spread, double samples_per_mm,

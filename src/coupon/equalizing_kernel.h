@@ -1,5 +1,6 @@
 #pragma once
 
+#include <functional>
 #include <opencv2/core.hpp>
 #include <vector>
 
@@ -15,8 +16,11 @@ struct SeparableFilter {
   };
   std::vector<Term> terms;
 
-  // CV_32FC1 to CV_32FC1 of the same size; mirrored at the borders.
-  [[nodiscard]] cv::Mat Apply(const cv::Mat& image) const;
+  // CV_32FC1 to CV_32FC1 of the same size; mirrored at the borders. `finished` is called with each
+  // row and its number as long as it is in the cache.
+  [[nodiscard]] cv::Mat Apply(
+      const cv::Mat& image,
+      const std::function<void(const float* row, int y)>& finished = {}) const;
 };
 
 // The filter that turns a point spread into a Gaussian of working_sd_mm. With the spread's

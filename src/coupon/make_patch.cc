@@ -3,7 +3,7 @@
 #include <fmt/format.h>
 
 #include <algorithm>
-#include <numeric>
+#include <cstring>
 #include <vector>
 
 #include "base/vectorize.h"
@@ -25,23 +25,56 @@ void FillInverseLight(const Light& light, const PlaneFrame& frame, int y,
   }
 }
 
-// Sums over the field, by column: many sums that grow at once.
-struct ColumnSums {
-  explicit ColumnSums(int columns) : values(columns, 0.F), clipped(columns, 0) {}
-  [[nodiscard]] double Sum() const { return std::accumulate(values.begin(), values.end(), 0.0); }
+constexpr float kClip = 0.985F;
 
-  std::vector<float> values;
-  std::vector<int> clipped;  // field pixels at or above the clip
+// Sums over the field.
+struct FieldSums {
+  float linear = 0;
+  float levelled = 0;
+  int clipped = 0;  // field pixels at or above the clip
 };
 
+// 1 / light along a stretch of a row: at its first pixel, and the step to the next.
+struct StretchLight {
+  float first = 1;
+  float step = 0;
+};
+
+// Divides a stretch by the light and adds its field, before and after, to the sums.
 LAYGAUGE_WIDE_VECTORS
-void AddFieldRow(const float* value, const std::uint8_t* region, float clip, ColumnSums& sums) {
-  float* values = sums.values.data();
-  int* clipped = sums.clipped.data();
-  for (size_t x = 0; x < sums.values.size(); ++x) {
-    const bool in_field = region[x] == static_cast<std::uint8_t>(Region::kField);
-    values[x] += in_field ? value[x] : 0.F;
-    clipped[x] += in_field && value[x] >= clip ? 1 : 0;
+void LevelStretch(const StretchLight& light, const std::uint8_t* region, int count, float* values,
+                  FieldSums& sums) {
+  constexpr int kField = static_cast<int>(Region::kField);
+  constexpr int kLanes = 8;
+  const EightFloats lanes = {0, 1, 2, 3, 4, 5, 6, 7};
+  const EightFloats none = {};
+  EightFloats linear = {};
+  EightFloats levelled = {};
+  EightInts clipped = {};
+  int i = 0;
+  for (; i + kLanes <= count; i += kLanes) {
+    EightInts regions;
+    ReadEight(region + i, regions);
+    const EightInts in_field = regions == kField;
+    const EightFloats before = *EightAt(values + i);
+    const EightFloats after = before * (light.first + (static_cast<float>(i) + lanes) * light.step);
+    std::memcpy(values + i, &after, sizeof after);
+    linear += in_field ? before : none;
+    levelled += in_field ? after : none;
+    clipped -= in_field & (before >= kClip);  // true is -1
+  }
+  for (int lane = 0; lane < kLanes; ++lane) {
+    sums.linear += linear[lane];
+    sums.levelled += levelled[lane];
+    sums.clipped += clipped[lane];
+  }
+  for (; i < count; ++i) {
+    const float before = values[i];
+    values[i] *= light.first + static_cast<float>(i) * light.step;
+    if (region[i] != kField) continue;
+    sums.linear += before;
+    sums.levelled += values[i];
+    sums.clipped += before >= kClip ? 1 : 0;
   }
 }
 
@@ -53,34 +86,33 @@ struct FieldMeans {
 
 // Divides the picture by the light, in place. The field's means before and after.
 FieldMeans Level(const Light& light, const PlaneFrame& frame, const CouponRegions& regions,
-                 float clip, cv::Mat& picture) {
-  ColumnSums linear(picture.cols);
-  ColumnSums levelled(picture.cols);
+                 cv::Mat& picture) {
   const size_t columns = picture.cols / kLightStep_px + 2;
   std::vector<float> upper(columns);
   std::vector<float> lower(columns);
   FillInverseLight(light, frame, 0, lower);
-  for (int y = 0; y < picture.rows; ++y) {
-    if (y % kLightStep_px == 0) {
-      upper.swap(lower);
-      FillInverseLight(light, frame, y + kLightStep_px, lower);
+  FieldMeans means;
+  for (int top = 0; top < picture.rows; top += kLightStep_px) {
+    upper.swap(lower);
+    FillInverseLight(light, frame, top + kLightStep_px, lower);
+    FieldSums sums;  // of few rows: single precision does
+    for (int y = top; y < std::min(top + kLightStep_px, picture.rows); ++y) {
+      const float down = static_cast<float>(y - top) / kLightStep_px;
+      auto* row = picture.ptr<float>(y);
+      const auto* region = regions.regions.ptr<std::uint8_t>(y);
+      for (int x = 0, node = 0; x < picture.cols; x += kLightStep_px, ++node) {
+        const float left = upper[node] + down * (lower[node] - upper[node]);
+        const float right = upper[node + 1] + down * (lower[node + 1] - upper[node + 1]);
+        LevelStretch({left, (right - left) / kLightStep_px}, region + x,
+                     std::min(kLightStep_px, picture.cols - x), row + x, sums);
+      }
     }
-    const float down = static_cast<float>(y % kLightStep_px) / kLightStep_px;
-    auto* row = picture.ptr<float>(y);
-    const auto* region = regions.regions.ptr<std::uint8_t>(y);
-    AddFieldRow(row, region, clip, linear);
-    for (int x = 0, node = 0; x < picture.cols; x += kLightStep_px, ++node) {
-      const float left = upper[node] + down * (lower[node] - upper[node]);
-      const float right = upper[node + 1] + down * (lower[node + 1] - upper[node + 1]);
-      const float step = (right - left) / kLightStep_px;
-      const int count = std::min(kLightStep_px, picture.cols - x);
-      for (int i = 0; i < count; ++i) row[x + i] *= left + static_cast<float>(i) * step;
-    }
-    AddFieldRow(row, region, clip, levelled);
+    means.linear += sums.linear;
+    means.levelled += sums.levelled;
+    means.clipped_pct += 100.0 * sums.clipped;
   }
   const auto count = static_cast<double>(regions.field_pixels);
-  const int clipped = std::accumulate(linear.clipped.begin(), linear.clipped.end(), 0);
-  return {linear.Sum() / count, levelled.Sum() / count, 100.0 * clipped / count};
+  return {means.linear / count, means.levelled / count, means.clipped_pct / count};
 }
 
 }  // namespace
@@ -115,8 +147,7 @@ Expected<Patch> MakePatch(const Photo& photo, const View& view, const Light& lig
   patch.regions = regions.regions;
   patch.px_per_mm = regions.px_per_mm;
   patch.origin_px = regions.origin_px;
-  constexpr float kClip = 0.985F;
-  const FieldMeans means = Level(light, frame, regions, kClip, patch.relative);
+  const FieldMeans means = Level(light, frame, regions, patch.relative);
   if (means.clipped_pct > options.most_clipped_pct) {
     return Unmeasurable(
         fmt::format("{:.1f} % of the coupon is over-exposed; take the photo with less exposure",

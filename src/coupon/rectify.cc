@@ -284,56 +284,67 @@ class EncodedSampler {
   Pairs pairs_;
 };
 
-// Samples the spline of a picture: pixel (0, 0) of the picture is (pad, pad) of `coefficients`.
-class SplineSampler {
- public:
-  SplineSampler(const cv::Mat& coefficients, const cv::Size& size, int pad)
-      : stride_(static_cast<int>(coefficients.step1())),
-        data_(coefficients.ptr<float>(0) + (pad - 1) * (stride_ + 1)),
-        largest_x_(std::max(0.F, static_cast<float>(size.width) - 1.001F)),
-        largest_y_(std::max(0.F, static_cast<float>(size.height) - 1.001F)) {}
+// The spline of a picture: pixel (0, 0) of the picture is (pad, pad) of `coefficients`.
+struct Spline {
+  Spline(const cv::Mat& coefficients, const cv::Size& size, int pad)
+      : stride(static_cast<int>(coefficients.step1())),
+        data(coefficients.ptr<float>(0) + (pad - 1) * (stride + 1)),
+        largest_x(std::max(0.F, static_cast<float>(size.width) - 1.001F)),
+        largest_y(std::max(0.F, static_cast<float>(size.height) - 1.001F)) {}
 
-  void Sample(const Stretch& at, float* out) {
-    for (int i = 0; i < kNodeStep_px; ++i) {
-      const float x = std::min(std::max(at.xs[i], 0.F), largest_x_);
-      const float y = std::min(std::max(at.ys[i], 0.F), largest_y_);
-      const int column = static_cast<int>(x);
-      const int row = static_cast<int>(y);
-      offsets_[i] = row * stride_ + column;
-      // Never negative, and a cast is what the compiler can do eight at a time.
-      // NOLINTBEGIN(bugprone-incorrect-roundings)
-      across_[i] = static_cast<int>((x - static_cast<float>(column)) * kPhases + 0.5F);
-      down_[i] = static_cast<int>((y - static_cast<float>(row)) * kPhases + 0.5F);
-      // NOLINTEND(bugprone-incorrect-roundings)
-    }
-    int i = 0;
-    for (; i + 4 <= at.count; i += 4) {
-      cv::v_store(out + i, cv::v_reduce_sum4(Products(i), Products(i + 1), Products(i + 2),
-                                             Products(i + 3)));
-    }
-    for (; i < at.count; ++i) out[i] = cv::v_reduce_sum(Products(i));
+  int stride;
+  const float* data;  // one before and above the picture's corner
+  float largest_x;
+  float largest_y;
+  const std::array<Weights, kPhases + 1>& weights = SplineWeights();
+};
+
+// Where a stretch's samples lie in a spline: the first of 16 coefficients, and their weights.
+struct SplinePlaces {
+  Ints offsets{};
+  Ints across{};
+  Ints down{};
+};
+
+// Of one sample: the four columns' sums, weighted.
+[[gnu::always_inline]] inline cv::v_float32x4 Products(const Spline& spline, const SplinePlaces& at,
+                                                       int i) {
+  const float* p = spline.data + at.offsets[i];
+  const Weights& down = spline.weights[at.down[i]];
+  cv::v_float32x4 sum = cv::v_load(p) * cv::v_setall_f32(down[0]);
+  sum += cv::v_load(p + spline.stride) * cv::v_setall_f32(down[1]);
+  sum += cv::v_load(p + 2 * spline.stride) * cv::v_setall_f32(down[2]);
+  sum += cv::v_load(p + 3 * spline.stride) * cv::v_setall_f32(down[3]);
+  return sum * cv::v_load(spline.weights[at.across[i]].data());
+}
+
+LAYGAUGE_WIDE_VECTORS
+void SampleSpline(const Spline& spline, const Stretch& at, float* out) {
+  SplinePlaces places;
+  for (int i = 0; i < kNodeStep_px; ++i) {
+    const float x = std::min(std::max(at.xs[i], 0.F), spline.largest_x);
+    const float y = std::min(std::max(at.ys[i], 0.F), spline.largest_y);
+    const int column = static_cast<int>(x);
+    const int row = static_cast<int>(y);
+    places.offsets[i] = row * spline.stride + column;
+    // Never negative, and a cast is what the compiler can do eight at a time.
+    // NOLINTBEGIN(bugprone-incorrect-roundings)
+    places.across[i] = static_cast<int>((x - static_cast<float>(column)) * kPhases + 0.5F);
+    places.down[i] = static_cast<int>((y - static_cast<float>(row)) * kPhases + 0.5F);
+    // NOLINTEND(bugprone-incorrect-roundings)
   }
-
- private:
-  // Of one sample: the four columns' sums, weighted.
-  [[nodiscard]] cv::v_float32x4 Products(int i) const {
-    const float* p = data_ + offsets_[i];
-    const Weights& down = weights_[down_[i]];
-    cv::v_float32x4 sum = cv::v_load(p) * cv::v_setall_f32(down[0]);
-    sum += cv::v_load(p + stride_) * cv::v_setall_f32(down[1]);
-    sum += cv::v_load(p + 2 * stride_) * cv::v_setall_f32(down[2]);
-    sum += cv::v_load(p + 3 * stride_) * cv::v_setall_f32(down[3]);
-    return sum * cv::v_load(weights_[across_[i]].data());
+  int i = 0;
+  for (; i + 4 <= at.count; i += 4) {
+    cv::v_store(out + i, cv::v_reduce_sum4(
+                             Products(spline, places, i), Products(spline, places, i + 1),
+                             Products(spline, places, i + 2), Products(spline, places, i + 3)));
   }
+  for (; i < at.count; ++i) out[i] = cv::v_reduce_sum(Products(spline, places, i));
+}
 
-  int stride_;
-  const float* data_;  // one before and above the picture's corner
-  float largest_x_;
-  float largest_y_;
-  const std::array<Weights, kPhases + 1>& weights_ = SplineWeights();
-  Ints offsets_{};
-  Ints across_{};
-  Ints down_{};
+struct SplineSampler {
+  Spline spline;
+  void Sample(const Stretch& at, float* out) const { SampleSpline(spline, at, out); }
 };
 
 }  // namespace
@@ -361,7 +372,7 @@ cv::Mat Rectify(const Photo& photo, const View& view, const PlaneFrame& frame) {
   const cv::Rect inner(1, 1, photo.size().width - 2, photo.size().height - 2);
   const int pad = (region & inner) == region ? 0 : 2;
   if (pad > 0) cv::copyMakeBorder(linear, linear, pad, pad, pad, pad, cv::BORDER_REFLECT_101);
-  return SampleFrame(map, frame.size_px, region.tl(), SplineSampler(linear, region.size(), pad));
+  return SampleFrame(map, frame.size_px, region.tl(), SplineSampler{{linear, region.size(), pad}});
 }
 
 cv::Mat RectifyEncoded(const Photo& photo, const View& view, const PlaneFrame& frame) {

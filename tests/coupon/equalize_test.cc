@@ -57,6 +57,31 @@ TEST(DesignEqualizer, LeavesTheWorkingGaussian) {
   }
 }
 
+// OpenCV's own separable filter is the reference; both sum a few dozen products near 1 in single
+// precision. Sizes that are and are not whole vectors, and one smaller than the filter.
+TEST(SeparableFilter, IsOpenCvsSumOfTerms) {
+  const LocalSpread spread{{0.042, 0.5, 0.09}, {0.05, 0.5, 0.09}, 16.5};
+  const SeparableFilter filter = DesignEqualizer(spread, 20, kWorkingSd, 2);
+  ASSERT_EQ(filter.terms.size(), 2U);
+  for (const cv::Size size : {cv::Size(97, 61), cv::Size(64, 40), cv::Size(5, 4)}) {
+    cv::Mat image(size, CV_32FC1);
+    cv::theRNG().state = 1;
+    cv::randu(image, 0.5, 1.5);
+    cv::Mat expected = cv::Mat::zeros(size, CV_32FC1);
+    for (const auto& term : filter.terms) {
+      cv::Mat part;
+      cv::sepFilter2D(image, part, CV_32F, term.row, term.column, {-1, -1}, 0,
+                      cv::BORDER_REFLECT_101);
+      expected += part;
+    }
+    int rows = 0;
+    const cv::Mat filtered =
+        filter.Apply(image, [&](const float* /*row*/, int y) { EXPECT_EQ(y, rows++); });
+    EXPECT_EQ(rows, size.height);
+    EXPECT_LE(cv::norm(filtered, expected, cv::NORM_INF), 5e-6) << size;
+  }
+}
+
 // Blurs that differ by axis (astigmatism, a shaken hand along one of them).
 TEST(DesignEqualizer, TreatsEachAxisByItself) {
   const LocalSpread spread = {{0.052, 0.2, 0.08}, {0.035, 0.2, 0.08}, 16.5};
