@@ -8,9 +8,6 @@ namespace laygauge {
 // Open channels along the lay. docs/metrics.md, "Gaps".
 [[nodiscard]] Metric GapsMetric();
 
-// gap_area_pct alone.
-[[nodiscard]] Feature MeasureGapArea(const Surface& surface);
-
 // How dark a valley between two lines that just touch is in this light, as the width of a wholly
 // dark channel, um: what is darker is open. `level`: the coupon's reflectance, paper 1.
 [[nodiscard]] double ClosedValleyDarknessUm(const GrooveShading& shading, double level);

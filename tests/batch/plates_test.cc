@@ -89,13 +89,14 @@ TEST(SamplePlates, GapAreaIsWithinItsTolerance) {
   EXPECT_GE(within, 0.9 * static_cast<double>(gaps.told.size()));
 }
 
-// Promised: a rank correlation of 0.85 with the truth. Blobs (0.846) and the ranks of gap areas
-// (0.94 for 0.95) fall short (docs/validation.md) and are not asserted.
+// Promised: a rank correlation of 0.85 with the truth, of gap areas 0.95. Blobs (0.846) fall short
+// (docs/validation.md) and are not asserted.
 TEST(SamplePlates, DefectsAreInTheirTrueOrder) {
   const auto rank = [](const char* feature, const char* truth) {
     const Compared compared = Compare(feature, truth);
     return RankCorrelation(compared.measured, compared.told);
   };
+  EXPECT_GE(rank("gap_area_pct", "gap_area_pct"), 0.95);
   EXPECT_GE(rank("scar_length_mm", "scar_length_mm"), 0.85);
   EXPECT_GE(rank("wall_gap_mean_mm", "ring_gap_mm"), 0.85);
   EXPECT_GE(rank("ridge_um", "ridge_um"), 0.85);
@@ -171,10 +172,15 @@ double LargestDifference(const std::string& feature, const std::string& plate,
   return largest / std::sqrt(squares / static_cast<double>(all.size() - 1));
 }
 
-// Promised: a tenth of the spread laid anew, a fifth with another camera, distance and light.
+// Promised: a tenth of the spread laid anew, a fifth with another camera, distance and light. Area
+// and lengths of gaps fall short of the first (0.16 to 0.22, docs/validation.md).
 TEST(SamplePlates, TheSameCouponsHaveTheSameGaps) {
-  for (const char* feature : {"wall_gap_pct", "wall_gap_mm", "wall_gap_mean_mm"}) {
+  for (const char* feature : {"gaps_per_cm2", "wall_gap_pct", "wall_gap_mm", "wall_gap_mean_mm"}) {
     EXPECT_LE(LargestDifference(feature, "d2", "d7"), 0.1) << feature;
+  }
+  for (const char* feature :
+       {"gap_area_pct", "gaps_per_cm2", "gap_length_mm_per_cm2", "gap_wide_mm",
+        "gap_long_mm_per_cm2", "wall_gap_pct", "wall_gap_mm", "wall_gap_mean_mm"}) {
     EXPECT_LE(LargestDifference(feature, "d2", "d3"), 0.2) << feature;
   }
 }
