@@ -8,16 +8,44 @@
 
 #include "base/statistics.h"
 #include "texture/spectrum_peak.h"
+#include "texture/tile_wave.h"
 
 namespace laygauge {
+
+namespace {
+
+struct AgreementOfTiles {
+  double value = 0;
+  double sd = 0;
+};
+
+AgreementOfTiles MeasureAgreement(const Amplitudes& amplitudes) {
+  std::complex<double> sum = 0;
+  double sum_abs = 0;
+  for (const auto& tile : amplitudes) {
+    sum += tile;
+    sum_abs += std::abs(tile);
+  }
+  if (!(sum_abs > 0)) {
+    return {};
+  }
+  const double value = Agreement(amplitudes);
+  double residuals = 0;
+  for (const auto& tile : amplitudes) {
+    const double projected = (tile * std::conj(sum)).real() / std::max(std::abs(sum), 1e-300);
+    residuals += std::pow(projected - value * std::abs(tile), 2);
+  }
+  return {value, std::sqrt(residuals) / sum_abs};
+}
+
+}  // namespace
 
 LineContrast MeasureLineContrast(const FieldSpectrum& spectrum, const Lines& lines) {
   constexpr int kHarmonics = 3;
   const auto amplitudes = DemodulateTiles(spectrum, lines.frequency_per_mm, kHarmonics);
   const double count = static_cast<double>(amplitudes.size());
   std::vector<std::vector<double>> squares(kHarmonics + 1);
-  std::complex<double> sum = 0;
-  double sum_abs = 0;
+  Amplitudes fundamentals;
   for (const auto& tile : amplitudes) {
     double total = 0;
     for (int h = 0; h < kHarmonics; ++h) {
@@ -25,22 +53,15 @@ LineContrast MeasureLineContrast(const FieldSpectrum& spectrum, const Lines& lin
       total += std::norm(tile[h]);
     }
     squares[kHarmonics].push_back(total);
-    sum += tile[0];
-    sum_abs += std::abs(tile[0]);
+    fundamentals.push_back(tile[0]);
   }
   const auto rms = [&](int h) { return std::sqrt(Mean(squares[h])); };
   const auto sd = [&](int h) {
     const double value = rms(h);
     return value > 0 ? StandardDeviation(squares[h]) / std::sqrt(count) / (2 * value) : 0;
   };
-  double residuals = 0;
-  const double agreement = sum_abs > 0 ? std::abs(sum) / sum_abs : 0;
-  for (const auto& tile : amplitudes) {
-    const double projected = (tile[0] * std::conj(sum)).real() / std::max(std::abs(sum), 1e-300);
-    residuals += std::pow(projected - agreement * std::abs(tile[0]), 2);
-  }
-  return {rms(0), rms(1), rms(2), rms(3),
-          sd(0),  sd(1),  sd(3),  sum_abs > 0 ? std::sqrt(residuals) / sum_abs : 0};
+  const AgreementOfTiles agreement = MeasureAgreement(WithoutPhaseDrift(spectrum, fundamentals));
+  return {rms(0), rms(1), rms(2), rms(3), sd(0), sd(1), sd(3), agreement.value, agreement.sd};
 }
 
 LineScatter MeasureLineScatter(const FieldSpectrum& spectrum, const Lines& lines) {

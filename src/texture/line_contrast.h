@@ -15,7 +15,10 @@ struct LineContrast {
   double fundamental_sd = 0;
   double second_sd = 0;
   double total_sd = 0;
-  double agreement_sd = 0;  // of Lines::phase_agreement
+  // Of the fundamental's phases in the tiles, without their drift: see Agreement and
+  // WithoutPhaseDrift (tile_wave.h).
+  double agreement = 0;
+  double agreement_sd = 0;
 };
 [[nodiscard]] LineContrast MeasureLineContrast(const FieldSpectrum& spectrum, const Lines& lines);
 

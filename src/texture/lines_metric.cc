@@ -25,7 +25,7 @@ Finding Measure(const Surface& surface) {
       Value(contrast.total, contrast.total_sd),
       Value(contrast.fundamental, contrast.fundamental_sd),
       Value(contrast.second, contrast.second_sd),
-      Value(lines.phase_agreement, contrast.agreement_sd),
+      Value(contrast.agreement, contrast.agreement_sd),
       Value(scatter.pitch_pct, scatter.pitch_pct * scatter.relative_sd),
       Value(scatter.lay_deg, scatter.lay_deg * scatter.relative_sd),
   };
@@ -44,7 +44,7 @@ Finding Measure(const Surface& surface) {
 
 Metric LinesMetric() {
   return {"lines",
-          1,
+          2,
           {{"pitch_mm", "distance between neighbouring line centres"},
            {"lay_deg", "direction of the lines, counter-clockwise from the coupon's +x"},
            {"line_contrast", "amplitude of the lines' first three harmonics, of mean reflectance"},

@@ -89,6 +89,24 @@ double Agreement(const Amplitudes& amplitudes) {
   return sum_abs > 0 ? std::abs(sum) / sum_abs : 0;
 }
 
+Amplitudes WithoutPhaseDrift(const FieldSpectrum& spectrum, const Amplitudes& amplitudes) {
+  constexpr int kReach = 16;
+  const double step = spectrum.bin_per_mm / (3 * kReach);
+  const ShiftedSums sums(spectrum, amplitudes, step, kReach);
+  cv::Point best;
+  for (int i = -kReach; i <= kReach; ++i) {
+    for (int j = -kReach; j <= kReach; ++j) {
+      if (std::norm(sums.At(i, j)) > std::norm(sums.At(best.x, best.y))) best = {i, j};
+    }
+  }
+  Amplitudes turned = amplitudes;
+  for (std::size_t t = 0; t < turned.size(); ++t) {
+    const cv::Point2d x = spectrum.tiles[t].centre_mm;
+    turned[t] *= std::polar(1.0, -kTwoPi * step * (best.x * x.x + best.y * x.y));
+  }
+  return turned;
+}
+
 Amplitudes AmplitudesAt(const FieldSpectrum& spectrum, cv::Point2d frequency) {
   Amplitudes result;
   for (const auto& tile : DemodulateTiles(spectrum, frequency, 1)) {

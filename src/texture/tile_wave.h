@@ -21,6 +21,12 @@ struct Wave {
 // |sum| over the sum of absolute values: 1 if all phases are equal, 1 / sqrt(n) by chance.
 [[nodiscard]] double Agreement(const Amplitudes& amplitudes);
 
+// The amplitudes with the plane of phases taken off on which they agree best: a shift of the
+// frequency by a third of a bin at most, on a grid of a 48th. The phase of one harmonic drifts over
+// the field where the light falls on the lines at changing angles, though the lines do not move.
+[[nodiscard]] Amplitudes WithoutPhaseDrift(const FieldSpectrum& spectrum,
+                                           const Amplitudes& amplitudes);
+
 [[nodiscard]] Amplitudes AmplitudesAt(const FieldSpectrum& spectrum, cv::Point2d frequency);
 
 // Squared sums of the tiles' amplitudes: what the whole field holds of each wave.
