@@ -52,13 +52,14 @@ struct CooccurrenceFeatures {
 [[nodiscard]] CooccurrenceMatrix ShareAmongLevels(const CooccurrenceMatrix& matrix, int steps);
 
 struct CooccurrenceOptions {
-  // The gray scale, in relative reflectance: levels of 0.1 about the coupon's own, 1, which is the
-  // centre of one. What lies beyond the scale's ends counts as its end. The window of a level has
-  // the standard deviation 0.05: noise and coding of a photo, 0.005 to 0.015 on pixels of 0.1 mm,
-  // widen that by 4 % at most.
-  double level_width = 0.1;
-  int levels_each_side = 8;  // of 1
-  int steps_per_level = 5;   // odd, so that 1 is the centre of a step
+  // The gray scale, in relative reflectance: levels of 0.15 about the coupon's own, 1, which is the
+  // centre of one, from 0.175 to 1.825. What lies beyond counts as the end. The window of a level
+  // has the standard deviation 0.075: noise and coding of a photo, 0.005 to 0.015 on pixels of 0.1
+  // mm, widen that by 2 % at most, and what one light shows of faint ridges and another does not,
+  // 0.02 to 0.04, by a tenth.
+  double level_width = 0.15;
+  int levels_each_side = 5;  // of 1
+  int steps_per_level = 7;   // odd, so that 1 is the centre of a step
   double offset_mm = 0.2;
   [[nodiscard]] int Steps() const { return (2 * levels_each_side + 1) * steps_per_level; }
   void Check() const;  // throws BadOption: field, value, rule
