@@ -56,9 +56,26 @@ class LocalMap {
     coefficients_ = terms.colPivHouseholderQr().solve(places);
   }
 
-  [[nodiscard]] Eigen::Vector2d Place(double x_px, double y_px) const {
-    return (Terms(x_px, y_px) * coefficients_).transpose();
-  }
+  // The places along a row of pixels: a cubic in x of two parts.
+  class Row {
+   public:
+    Row(const LocalMap& map, double y_px) : map_(map) {
+      const double y = (y_px - map.center_.y()) * map.scale_;
+      const auto& c = map.coefficients_;  // of the terms in the order of Terms()
+      powers_[0] = c.row(0) + y * (c.row(2) + y * (c.row(5) + y * c.row(9)));
+      powers_[1] = c.row(1) + y * (c.row(4) + y * c.row(8));
+      powers_[2] = c.row(3) + y * c.row(7);
+      powers_[3] = c.row(6);
+    }
+    [[nodiscard]] Eigen::Vector2d Place(double x_px) const {
+      const double x = (x_px - map_.center_.x()) * map_.scale_;
+      return powers_[0] + x * (powers_[1] + x * (powers_[2] + x * powers_[3]));
+    }
+
+   private:
+    const LocalMap& map_;
+    std::array<Eigen::Vector2d, 4> powers_;
+  };
   [[nodiscard]] const Eigen::Vector2d& low() const { return low_; }
   [[nodiscard]] const Eigen::Vector2d& high() const { return high_; }
 
@@ -94,8 +111,9 @@ Expected<EdgeStrip> ReadEdge(const Photo& photo, const View& view, const KnownEd
   const cv::Mat linear = LinearRegion(photo, box);
   for (int row = 0; row < box.height; ++row) {
     const auto* values = linear.ptr<float>(row);
+    const LocalMap::Row places(map, box.y + row);
     for (int column = 0; column < box.width; ++column) {
-      const Eigen::Vector2d place = map.Place(box.x + column, box.y + row);
+      const Eigen::Vector2d place = places.Place(box.x + column);
       if (std::abs(place.x()) >= half_width_mm) continue;
       if (std::abs(place.y()) >= edge.length_mm / 2 - trim_mm) continue;
       strip.samples.push_back({place.x(), place.y(), values[column]});

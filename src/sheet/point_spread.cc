@@ -6,26 +6,37 @@
 namespace laygauge {
 namespace {
 
-double NormalDistribution(double x, double sd) { return 0.5 * std::erfc(-x / (sd * M_SQRT2)); }
+// So many standard deviations away the normal distribution is 0 or 1 within 1e-13.
+constexpr double kFar = 7.5;
+
+double NormalDistribution(double x, double sd) {
+  const double z = x / sd;
+  if (std::abs(z) > kFar) return z > 0 ? 1 : 0;
+  return 0.5 * std::erfc(-z / M_SQRT2);
+}
 
 double NormalDensity(double x, double sd) {
   const double z = x / sd;
+  if (std::abs(z) > kFar) return 0;
   return std::exp(-0.5 * z * z) / (sd * std::sqrt(2 * std::numbers::pi));
 }
+
+// The standard deviation of two blurs one after the other.
+double Joined(double a, double b) { return std::sqrt(a * a + b * b); }
 
 }  // namespace
 
 double PointSpread::EdgeResponse(double distance_mm) const {
   const double direct = NormalDistribution(distance_mm, blur_sd_mm);
   if (sharpening == 0) return direct;
-  const double halo = NormalDistribution(distance_mm, std::hypot(blur_sd_mm, halo_sd_mm));
+  const double halo = NormalDistribution(distance_mm, Joined(blur_sd_mm, halo_sd_mm));
   return (1 + sharpening) * direct - sharpening * halo;
 }
 
 double PointSpread::LineSpread(double distance_mm) const {
   const double direct = NormalDensity(distance_mm, blur_sd_mm);
   if (sharpening == 0) return direct;
-  const double halo = NormalDensity(distance_mm, std::hypot(blur_sd_mm, halo_sd_mm));
+  const double halo = NormalDensity(distance_mm, Joined(blur_sd_mm, halo_sd_mm));
   return (1 + sharpening) * direct - sharpening * halo;
 }
 

@@ -69,7 +69,7 @@ double Linearise(const EdgeFit& fit, double distance_mm, Vector* gradient) {
   const auto& [s, a, r] = fit.spread;
   const double x = distance_mm - fit.offset_mm;
   const double contrast = fit.bright - fit.dark;
-  const double wide = std::hypot(s, r);
+  const double wide = std::sqrt(s * s + r * r);
   const PointSpread direct{s, 0, 0};
   const PointSpread halo{wide, 0, 0};
   const double direct_line = direct.LineSpread(x);
@@ -98,18 +98,28 @@ double Cost(const EdgeProfile& profile, const EdgeFit& fit) {
   return cost;
 }
 
-// Normal equations of the linearised model; clipped bins say nothing about the parameters.
-void BuildNormal(const EdgeProfile& profile, const EdgeFit& fit, Matrix* normal, Vector* right) {
-  normal->setZero();
-  right->setZero();
+// The normal equations of the linearised model, and the cost; clipped bins say nothing about the
+// parameters.
+struct Linearised {
+  Matrix normal = Matrix::Zero();
+  Vector right = Vector::Zero();
+  double cost = 0;
+};
+
+Linearised LineariseProfile(const EdgeProfile& profile, const EdgeFit& fit) {
+  Linearised result;
   for (size_t bin = 0; bin < profile.size(); ++bin) {
-    if (profile.count[bin] == 0) continue;
+    const double count = profile.count[bin];
+    if (count == 0) continue;
     Vector g;
     const double modelled = Linearise(fit, profile.distance_mm[bin], &g);
+    const double miss = profile.value[bin] - std::clamp(modelled, 0.0, 1.0);
+    result.cost += count * miss * miss;
     if (modelled < 0 || modelled > 1) continue;
-    normal->noalias() += profile.count[bin] * g * g.transpose();
-    *right += profile.count[bin] * (profile.value[bin] - modelled) * g;
+    result.normal.noalias() += count * g * g.transpose();
+    result.right += count * miss * g;
   }
+  return result;
 }
 
 double ResidualRms(const EdgeProfile& profile, const EdgeFit& fit) {
@@ -127,27 +137,24 @@ EdgeFit FitEdge(const EdgeProfile& profile, const EdgeFit& start, double pixel_m
   constexpr double kEnough = 1e-6;  // relative fall of the cost
   const int free = hold_sharpening ? kParameters - 2 : kParameters;
   Vector p = hold_sharpening ? Pack(start) : Within(Pack(start), pixel_mm);
-  double cost = Cost(profile, Unpack(p));
+  Linearised at = LineariseProfile(profile, Unpack(p));
   double damping = 1e-3;
   for (int step = 0; step < kMaxSteps && damping < 1e8; ++step) {
-    Matrix normal;
-    Vector right;
-    BuildNormal(profile, Unpack(p), &normal, &right);
     bool settled = false;
     for (; damping < 1e8; damping *= 10) {
-      Eigen::MatrixXd damped = normal.topLeftCorner(free, free);
+      Eigen::MatrixXd damped = at.normal.topLeftCorner(free, free);
       // The floor keeps a parameter without effect (the halo of no sharpening) where it is.
-      damped.diagonal() += damping * normal.diagonal().head(free) +
-                           Eigen::VectorXd::Constant(free, 1e-12 * normal.diagonal().maxCoeff());
+      damped.diagonal() += damping * at.normal.diagonal().head(free) +
+                           Eigen::VectorXd::Constant(free, 1e-12 * at.normal.diagonal().maxCoeff());
       Vector next = p;
-      next.head(free) += damped.ldlt().solve(right.head(free));
+      next.head(free) += damped.ldlt().solve(at.right.head(free));
       if (!hold_sharpening) next = Within(next, pixel_mm);
       next[3] = std::clamp(next[3], 0.15 * pixel_mm, 6 * pixel_mm);
-      const double next_cost = Cost(profile, Unpack(next));
-      if (!(next_cost < cost)) continue;
-      settled = cost - next_cost < kEnough * cost;
+      const Linearised there = LineariseProfile(profile, Unpack(next));
+      if (!(there.cost < at.cost)) continue;
+      settled = at.cost - there.cost < kEnough * at.cost;
       p = next;
-      cost = next_cost;
+      at = there;
       damping = std::max(damping / 10, 1e-9);
       break;
     }
@@ -324,23 +331,35 @@ double SampleScatter(std::span<const EdgeSample> samples, const EdgeFit& fit,
 
 void StraightenEdge(std::span<EdgeSample> samples, const EdgeFit& fit, double half_width_mm) {
   const EdgeCurve curve(fit, half_width_mm);
-  Eigen::Matrix3d normal = Eigen::Matrix3d::Zero();
-  Eigen::Vector3d right = Eigen::Vector3d::Zero();
-  const auto basis = [](const EdgeSample& sample) {
-    return Eigen::Vector3d(1, sample.along_mm, sample.along_mm * sample.along_mm);
-  };
+  std::array<double, 5> moments{};  // sums of slope^2 along^k
+  std::array<double, 3> products{};
   for (const EdgeSample& sample : samples) {
     const auto [value, slope] = curve.At(sample.distance_mm);
     if (std::abs(slope) < 1e-6) continue;
-    const Eigen::Vector3d b = basis(sample);
-    normal += slope * slope * b * b.transpose();
-    right += slope * (sample.value - value) * b;
+    double weight = slope * slope;
+    for (double& moment : moments) {
+      moment += weight;
+      weight *= sample.along_mm;
+    }
+    double product = slope * (sample.value - value);
+    for (double& sum : products) {
+      sum += product;
+      product *= sample.along_mm;
+    }
   }
+  Eigen::Matrix3d normal;
+  for (int i = 0; i < 3; ++i) {
+    for (int k = 0; k < 3; ++k) normal(i, k) = moments[i + k];
+  }
+  const Eigen::Vector3d right(products[0], products[1], products[2]);
   // value ~ curve(distance + shift): the shift that the samples ask for.
   normal.diagonal() *= 1 + 1e-9;
   const Eigen::Vector3d shift = normal.ldlt().solve(right);
   if (!shift.allFinite()) return;
-  for (EdgeSample& sample : samples) sample.distance_mm += shift.dot(basis(sample));
+  for (EdgeSample& sample : samples) {
+    const double along_mm = sample.along_mm;
+    sample.distance_mm += shift[0] + along_mm * (shift[1] + along_mm * shift[2]);
+  }
 }
 
 }  // namespace laygauge
