@@ -18,11 +18,15 @@ struct RoughMarker {
 // The photo reduced by `factor` by averaging, 8 bit. A reduced pixel's centre lies in the middle of
 // its factor x factor block.
 cv::Mat Reduced(const cv::Mat& encoded, int factor) {
-  cv::Mat reduced = encoded;
-  if (factor > 1) {
-    const cv::Rect whole_blocks(0, 0, encoded.cols / factor * factor,
-                                encoded.rows / factor * factor);
-    cv::resize(encoded(whole_blocks), reduced, {}, 1.0 / factor, 1.0 / factor, cv::INTER_AREA);
+  cv::Mat reduced =
+      encoded(cv::Rect(0, 0, encoded.cols / factor * factor, encoded.rows / factor * factor));
+  // OpenCV has fast code for halves only.
+  while (factor > 1) {
+    const int step = factor % 2 == 0 ? 2 : factor;
+    cv::Mat smaller;
+    cv::resize(reduced, smaller, {}, 1.0 / step, 1.0 / step, cv::INTER_AREA);
+    reduced = smaller;
+    factor /= step;
   }
   if (reduced.depth() == CV_16U) reduced.convertTo(reduced, CV_8U, 1.0 / 257);
   return reduced;

@@ -38,11 +38,11 @@ struct Side {
 
 // Linear interpolation; NaN outside.
 double SampleLight(const cv::Mat& light, double x, double y) {
-  const int column = static_cast<int>(std::floor(x));
-  const int row = static_cast<int>(std::floor(y));
-  if (column < 0 || row < 0 || column + 1 >= light.cols || row + 1 >= light.rows) {
+  if (!(x >= 0 && y >= 0 && x < light.cols - 1 && y < light.rows - 1)) {
     return std::numeric_limits<double>::quiet_NaN();
   }
+  const int column = static_cast<int>(x);
+  const int row = static_cast<int>(y);
   const double fx = x - column;
   const double fy = y - row;
   const float* upper = light.ptr<float>(row) + column;
@@ -70,6 +70,7 @@ std::optional<Profiles> TakeProfiles(const cv::Mat& light, const Side& side, dou
   for (int i = 0; i < count; ++i) {
     const double t = side.length_px * (kEnd + (1 - 2 * kEnd) * (i + 0.5) / count);
     std::vector<double> profile;
+    profile.reserve(2 * static_cast<size_t>(steps) + 1);
     for (int k = -steps; k <= steps; ++k) {
       const Vector2d at = side.from + t * side.along + k * kStep_px * side.outward;
       profile.push_back(SampleLight(light, at.x(), at.y()));
