@@ -136,7 +136,7 @@ Feature WithSd(const Values& whole, const std::vector<Values>& parts, int featur
 
 // The field without its form, which would lead a smooth top from level to level.
 cv::Mat LevelledField(const AlignedField& field, const cv::Mat& mask) {
-  constexpr int kEveryPixel = 4;  // of either axis: the form has six coefficients
+  constexpr int kEveryPixel = 8;  // of either axis: the form has six coefficients
   cv::Mat levelled = field.relative.clone();
   RemoveForm(levelled, mask, kEveryPixel);
   levelled += 1;
@@ -212,18 +212,24 @@ CooccurrenceMatrix ShareAmongLevels(const CooccurrenceMatrix& matrix, int steps)
       weights[step][share] = SplineWeight((step + 0.5) / steps + 0.5 - share);
     }
   }
-  CooccurrenceMatrix shared{levels, std::vector<double>(levels * levels, 0), matrix.pairs};
+  // First the rows of the matrix are shared, then its columns.
+  std::vector<double> rows(levels * matrix.levels, 0);
   for (int i = 0; i < matrix.levels; ++i) {
-    for (int j = 0; j < matrix.levels; ++j) {
-      const double count = matrix.counts[i * matrix.levels + j];
-      if (count == 0) {
-        continue;
+    const double* from = matrix.counts.data() + i * matrix.levels;
+    for (int share = 0; share < kShares; ++share) {
+      double* to = rows.data() + (i / steps + share) * matrix.levels;
+      const double weight = weights[i % steps][share];
+      for (int j = 0; j < matrix.levels; ++j) {
+        to[j] += weight * from[j];
       }
-      for (int a = 0; a < kShares; ++a) {
-        for (int b = 0; b < kShares; ++b) {
-          shared.counts[(i / steps + a) * levels + j / steps + b] +=
-              count * weights[i % steps][a] * weights[j % steps][b];
-        }
+    }
+  }
+  CooccurrenceMatrix shared{levels, std::vector<double>(levels * levels, 0), matrix.pairs};
+  for (int i = 0; i < levels; ++i) {
+    for (int j = 0; j < matrix.levels; ++j) {
+      const double count = rows[i * matrix.levels + j];
+      for (int share = 0; share < kShares; ++share) {
+        shared.counts[i * levels + j / steps + share] += count * weights[j % steps][share];
       }
     }
   }
@@ -271,7 +277,7 @@ cv::Mat QuantiseRelative(const cv::Mat& relative, const CooccurrenceOptions& opt
 
 Metric CooccurrenceMetric() {
   return {"cooccurrence",
-          2,
+          3,
           {{"cooccurrence_contrast_along", "mean squared difference of gray levels 0.2 mm along"},
            {"cooccurrence_contrast_across", "the same across the lay"},
            {"cooccurrence_contrast_ratio", "across over along"},

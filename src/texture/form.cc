@@ -34,12 +34,17 @@ void RemoveForm(cv::Mat& values, const cv::Mat& weights, int step) {
   const Row form = normal.ldlt().solve(right);
   for (int y = 0; y < values.rows; ++y) {
     const double v = Scaled(y, values.rows);
-    const double constant = form[0] + form[2] * v + form[5] * v * v;
+    // In powers of x from here on.
     const double slope = form[1] + form[4] * v;
+    const double constant = form[0] + form[2] * v + form[5] * v * v;
+    const double per_pixel = 2.0 / values.cols;
+    const auto c0 = static_cast<float>(constant - slope + form[3]);
+    const auto c1 = static_cast<float>((slope - 2 * form[3]) * per_pixel);
+    const auto c2 = static_cast<float>(form[3] * per_pixel * per_pixel);
     auto* row = values.ptr<float>(y);
     for (int x = 0; x < values.cols; ++x) {
-      const double u = Scaled(x, values.cols);
-      row[x] -= static_cast<float>(constant + u * (slope + form[3] * u));
+      const auto at = static_cast<float>(x);
+      row[x] -= c0 + at * (c1 + at * c2);
     }
   }
 }
