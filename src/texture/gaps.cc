@@ -1,5 +1,7 @@
 #include "texture/gaps.h"
 
+#include <fmt/core.h>
+
 #include <algorithm>
 #include <array>
 #include <cmath>
@@ -11,10 +13,10 @@ namespace laygauge {
 namespace {
 
 // Of a valley between touching lines, found on the sample plates (docs/metrics.md, "Gaps").
-constexpr double kDeepUm = 25.5;           // in black, lit evenly
-constexpr double kInterreflectionUm = 16;  // less in white: light from wall to wall
+constexpr double kDeepUm = 25;               // in black, lit evenly
+constexpr double kInterreflectionUm = 16.5;  // less in white: light from wall to wall
 constexpr double kProbeGain = 1.0;
-constexpr double kTiltGain = 0.75;  // shadow that light from one side casts
+constexpr double kTiltGain = 0.7;  // shadow that light from one side casts
 constexpr double kMinUm = 12;
 // Beyond these the probe shows a mirrored lamp, not shading.
 constexpr double kProbeLowUm = -8;
@@ -125,18 +127,25 @@ Mark GapMark(const std::vector<OpenValley>& path, const Surface& surface) {
   return mark;
 }
 
+Finding WithoutGaps(const std::string& reason) {
+  const Feature none{std::nullopt, std::nullopt, reason};
+  return {{none, none, none, none, none}, {}};
+}
+
 Finding MeasureGaps(const Surface& surface) {
+  if (surface.torn.Failed()) {
+    return WithoutGaps(
+        fmt::format("{:.0f} % of the field is torn or lifted, and gaps cannot be told from tears",
+                    surface.torn.area_pct));
+  }
   const OpenChannels found = FindChannels(surface);
   const Tiles tiles = MeasureTiles(found.valleys, surface.valleys, surface.aligned.px_per_mm);
   const double area_mm2 = AreaMm2(tiles);
-  Finding finding;
   constexpr double kMinAreaMm2 = 25;
   if (area_mm2 < kMinAreaMm2) {
-    const Feature none{std::nullopt, std::nullopt,
-                       "The coupon's field is smaller than 25 mm2: too little to judge its gaps."};
-    finding.features.assign(5, none);
-    return finding;
+    return WithoutGaps("The coupon's field is smaller than 25 mm2: too little to judge its gaps.");
   }
+  Finding finding;
   for (const auto& path : found.plain) {
     finding.marks.push_back(GapMark(path, surface));
   }
@@ -167,11 +176,11 @@ double ClosedValleyDarknessUm(const GrooveShading& shading, double level) {
 
 Metric GapsMetric() {
   return {"gaps",
-          3,
+          4,
           {{"gap_area_pct", "share of the field that open channels between lines take"},
            {"gaps_per_cm2", "open channels of 1.25 mm and more"},
            {"gap_length_mm_per_cm2", "their length together"},
-           {"gap_wide_mm", "width that one in fifteen of all valleys exceeds"},
+           {"gap_wide_mm", "width that one in ten of all valleys exceeds"},
            {"gap_long_mm_per_cm2", "length of those of 5 mm and more"}},
           &MeasureGaps};
 }

@@ -36,7 +36,7 @@ struct OpenChannels {
 inline constexpr double kMinChannelMm =
     1.25;  // a scar or a grain of noise is shorter along the lay
 inline constexpr double kLongChannelMm = 5;
-inline constexpr int kWidestOf = 15;
+inline constexpr int kWidestOf = 10;
 
 // Valleys darker than a closed one, linked along the lay to channels of kMinChannelMm and more. A
 // valley of darkness D is open by (D - closed) / 0.9 (docs/metrics.md, "Gaps").
