@@ -8,6 +8,8 @@
 #include <opencv2/imgproc.hpp>
 #include <vector>
 
+#include "base/vectorize.h"
+
 namespace laygauge {
 namespace {
 
@@ -113,6 +115,7 @@ Walk MakeWalk(cv::Point2d start, cv::Point2d step, Span span) {
 }
 
 // Pixels [begin, end) of a row of the turned field; 1 and kOff beyond the walk's span.
+LAYGAUGE_WIDE_VECTORS
 void SampleWalk(const Patch& patch, const Walk& walk, int begin, int end, float* relative,
                 std::uint8_t* regions) {
   static const std::array<Kernel, kSteps> kernels = CubicKernels();
@@ -120,24 +123,31 @@ void SampleWalk(const Patch& patch, const Walk& walk, int begin, int end, float*
   const std::size_t region_stride = patch.regions.step1();
   const auto* source = patch.relative.ptr<float>();
   const auto* source_regions = patch.regions.ptr<std::uint8_t>();
+  const int first = std::clamp(walk.span.begin, begin, end);
+  const int last = std::clamp(walk.span.end, first, end);
+  // Local, so that no writing to `regions` can change them.
+  std::int64_t at_x = walk.x + first * walk.step_x;
+  std::int64_t at_y = walk.y + first * walk.step_y;
+  const std::int64_t step_x = walk.step_x;
+  const std::int64_t step_y = walk.step_y;
   const auto sample = [&](int u) {
-    const auto sx = static_cast<std::size_t>((walk.x + u * walk.step_x) >> 16);
-    const auto sy = static_cast<std::size_t>((walk.y + u * walk.step_y) >> 16);
+    const auto sx = static_cast<std::size_t>(at_x >> 16);
+    const auto sy = static_cast<std::size_t>(at_y >> 16);
+    at_x += step_x;
+    at_y += step_y;
     regions[u] =
         source_regions[(sy + kSteps / 2) / kSteps * region_stride + (sx + kSteps / 2) / kSteps];
     return Products(source + (sy / kSteps - 1) * stride + sx / kSteps - 1, stride,
                     kernels[sx % kSteps], kernels[sy % kSteps]);
   };
-  const int first = std::clamp(walk.span.begin, begin, end);
-  const int last = std::clamp(walk.span.end, first, end);
   std::fill(relative + begin, relative + first, 1.0F);
   std::fill(relative + last, relative + end, 1.0F);
   std::fill(regions + begin, regions + first, static_cast<std::uint8_t>(Region::kOff));
   std::fill(regions + last, regions + end, static_cast<std::uint8_t>(Region::kOff));
   int u = first;
   for (; u + 4 <= last; u += 4) {
-    cv::v_store(relative + u,
-                cv::v_reduce_sum4(sample(u), sample(u + 1), sample(u + 2), sample(u + 3)));
+    const cv::v_float32x4 sums[4] = {sample(u), sample(u + 1), sample(u + 2), sample(u + 3)};
+    cv::v_store(relative + u, cv::v_reduce_sum4(sums[0], sums[1], sums[2], sums[3]));
   }
   for (; u < last; ++u) relative[u] = cv::v_reduce_sum(sample(u));
 }
@@ -154,6 +164,21 @@ void SampleSquares(const Patch& patch, const std::vector<Walk>& walks, AlignedFi
                    aligned.regions.ptr<std::uint8_t>(v));
       }
     }
+  }
+}
+
+LAYGAUGE_WIDE_VECTORS
+void MeansOfFour(const float* top, const float* low, int cols, float* __restrict out) {
+  for (int x = 0; x < cols; ++x) {
+    out[x] = 0.25F * (top[2 * x] + top[2 * x + 1] + low[2 * x] + low[2 * x + 1]);
+  }
+}
+
+LAYGAUGE_WIDE_VECTORS
+void LowestOfFour(const std::uint8_t* top, const std::uint8_t* low, int cols,
+                  std::uint8_t* __restrict out) {
+  for (int x = 0; x < cols; ++x) {
+    out[x] = std::min(std::min(top[2 * x], top[2 * x + 1]), std::min(low[2 * x], low[2 * x + 1]));
   }
 }
 
@@ -204,17 +229,10 @@ AlignedField HalveField(const AlignedField& field) {
   half.relative.create(rows, cols, CV_32FC1);
   half.regions.create(rows, cols, CV_8UC1);
   for (int y = 0; y < rows; ++y) {
-    const auto* top = field.relative.ptr<float>(2 * y);
-    const auto* low = field.relative.ptr<float>(2 * y + 1);
-    const auto* top_region = field.regions.ptr<std::uint8_t>(2 * y);
-    const auto* low_region = field.regions.ptr<std::uint8_t>(2 * y + 1);
-    auto* out = half.relative.ptr<float>(y);
-    auto* out_region = half.regions.ptr<std::uint8_t>(y);
-    for (int x = 0; x < cols; ++x) {
-      out[x] = 0.25F * (top[2 * x] + top[2 * x + 1] + low[2 * x] + low[2 * x + 1]);
-      out_region[x] = std::min(std::min(top_region[2 * x], top_region[2 * x + 1]),
-                               std::min(low_region[2 * x], low_region[2 * x + 1]));
-    }
+    MeansOfFour(field.relative.ptr<float>(2 * y), field.relative.ptr<float>(2 * y + 1), cols,
+                half.relative.ptr<float>(y));
+    LowestOfFour(field.regions.ptr<std::uint8_t>(2 * y), field.regions.ptr<std::uint8_t>(2 * y + 1),
+                 cols, half.regions.ptr<std::uint8_t>(y));
   }
   // The centre of pixel (0, 0) lies at (0.5, 0.5) of the finer image.
   const cv::Matx23d& m = field.coupon_from_aligned;

@@ -5,6 +5,8 @@
 #include <numbers>
 #include <opencv2/imgproc.hpp>
 
+#include "base/vectorize.h"
+
 namespace laygauge {
 namespace {
 
@@ -35,31 +37,48 @@ Plane MakePlane(const cv::Mat& image, const cv::Mat& searched) {
   return plane;
 }
 
+LAYGAUGE_WIDE_VECTORS
+void Add(const std::int16_t* row, int begin, int end, std::int16_t* __restrict to) {
+  for (int x = begin; x < end; ++x) to[x] = static_cast<std::int16_t>(to[x] + row[x]);
+}
+
+LAYGAUGE_WIDE_VECTORS
+void Subtract(const std::int16_t* row, int begin, int end, std::int16_t* __restrict from) {
+  for (int x = begin; x < end; ++x) from[x] = static_cast<std::int16_t>(from[x] - row[x]);
+}
+
+// Of the absolute values.
+LAYGAUGE_WIDE_VECTORS
+std::int16_t Largest(const std::int16_t* row, int begin, int end) {
+  std::int16_t most = 0;
+  for (int x = begin; x < end; ++x) {
+    most = std::max(most, static_cast<std::int16_t>(std::abs(row[x])));
+  }
+  return most;
+}
+
 // sums(y, x) = sum of image(y + k, x + s(y + k) - s(y)) over |k| <= half, s(y) = round(slope y).
 void SumDown(const Plane& plane, double slope, int half, cv::Mat& sums) {
   const int rows = plane.image.rows;
   const int cols = plane.image.cols;
-  const auto shift = [slope](int y) { return static_cast<int>(std::lround(slope * y)); };
-  const int highest = std::max(shift(0), shift(rows - 1));
-  const int lowest = std::min(shift(0), shift(rows - 1));
+  std::vector<int> shift;
+  for (int y = 0; y < rows; ++y) shift.push_back(static_cast<int>(std::lround(slope * y)));
+  const int highest = std::max(shift.front(), shift.back());
+  const int lowest = std::min(shift.front(), shift.back());
   std::vector<std::int16_t> running(static_cast<size_t>(cols + highest - lowest), 0);
-  const auto run = [&](int y) { return running.data() + (highest - shift(y)); };
+  const auto run = [&](int y) {
+    return running.data() + (highest - shift[static_cast<size_t>(y)]);
+  };
   for (int y = -half; y < rows; ++y) {
     const int enters = y + half;
     if (enters < rows) {
-      const auto* in = plane.image.ptr<std::int16_t>(enters);
-      auto* to = run(enters);
-      for (int x = plane.begin[enters]; x < plane.end[enters]; ++x) {
-        to[x] = static_cast<std::int16_t>(to[x] + in[x]);
-      }
+      Add(plane.image.ptr<std::int16_t>(enters), plane.begin[enters], plane.end[enters],
+          run(enters));
     }
     const int leaves = y - half - 1;
     if (leaves >= 0) {
-      const auto* out = plane.image.ptr<std::int16_t>(leaves);
-      auto* from = run(leaves);
-      for (int x = plane.begin[leaves]; x < plane.end[leaves]; ++x) {
-        from[x] = static_cast<std::int16_t>(from[x] - out[x]);
-      }
+      Subtract(plane.image.ptr<std::int16_t>(leaves), plane.begin[leaves], plane.end[leaves],
+               run(leaves));
     }
     if (y >= 0) {
       std::copy(run(y) + plane.begin[y], run(y) + plane.end[y],
@@ -69,23 +88,29 @@ void SumDown(const Plane& plane, double slope, int half, cv::Mat& sums) {
 }
 
 // 90 % quantile of |sum| on every fourth searched pixel along both axes, over a normal one's.
-double Spread(const Plane& plane, const cv::Mat& sums, std::vector<std::int16_t>& scratch) {
-  scratch.clear();
+// `counts`: scratch space, a 0 for every possible |sum|; counting is quicker than sorting.
+double Spread(const Plane& plane, const cv::Mat& sums, std::vector<int>& counts) {
+  int total = 0;
+  int most = 0;
   for (int y = 0; y < sums.rows; y += 4) {
     const auto* row = sums.ptr<std::int16_t>(y);
     const auto* on = plane.searched.ptr<std::uint8_t>(y);
     for (int x = plane.begin[y]; x < plane.end[y]; x += 4) {
       if (on[x] != 0) {
-        scratch.push_back(static_cast<std::int16_t>(std::abs(row[x])));
+        const int size = std::abs(row[x]);
+        most = std::max(most, size);
+        ++counts[static_cast<size_t>(size)];
+        ++total;
       }
     }
   }
-  if (scratch.empty()) {
+  if (total == 0) {
     return 0;
   }
-  const auto at = scratch.begin() + static_cast<std::ptrdiff_t>(scratch.size() * 9 / 10);
-  std::nth_element(scratch.begin(), at, scratch.end());
-  return *at / 1.6449;
+  size_t quantile = 0;
+  for (int below = counts[0]; below <= total * 9 / 10; below += counts[quantile]) ++quantile;
+  std::fill(counts.begin(), counts.begin() + most + 1, 0);
+  return static_cast<double>(quantile) / 1.6449;
 }
 
 void KeepHits(const Plane& plane, const cv::Mat& sums, double spread, double min_sigmas,
@@ -93,11 +118,7 @@ void KeepHits(const Plane& plane, const cv::Mat& sums, double spread, double min
   const int least = static_cast<int>(std::ceil(min_sigmas * spread));
   for (int y = 0; y < sums.rows; ++y) {
     const auto* row = sums.ptr<std::int16_t>(y);
-    std::int16_t most = 0;
-    for (int x = plane.begin[y]; x < plane.end[y]; ++x) {
-      most = std::max(most, static_cast<std::int16_t>(std::abs(row[x])));
-    }
-    if (most < least) {
+    if (Largest(row, plane.begin[y], plane.end[y]) < least) {
       continue;
     }
     const auto* on = plane.searched.ptr<std::uint8_t>(y);
@@ -148,7 +169,7 @@ LineSums SumAlongLines(const cv::Mat& image, const cv::Mat& searched,
   const Plane transposed = MakePlane(image.t(), searched.t());
   LineSums result;
   result.directions_deg = directions_deg;
-  std::vector<std::int16_t> scratch;
+  std::vector<int> counts(1U << 15U, 0);
   for (size_t i = 0; i < directions_deg.size(); ++i) {
     const double radians = directions_deg[i] * std::numbers::pi / 180;
     const double dx = std::cos(radians);
@@ -159,7 +180,7 @@ LineSums SumAlongLines(const cv::Mat& image, const cv::Mat& searched,
         static_cast<int>(std::lround(length_px / 2 * std::max(std::abs(dx), std::abs(dy))));
     cv::Mat sums(plane.image.size(), CV_16SC1);
     SumDown(plane, steep ? dx / dy : dy / dx, half, sums);
-    const double spread = Spread(plane, sums, scratch);
+    const double spread = Spread(plane, sums, counts);
     result.spread.push_back(spread / std::sqrt(2 * half + 1));
     if (spread > 0) {
       KeepHits(plane, sums, spread, min_sigmas, {{}, static_cast<int>(i), 0}, !steep, result.hits);

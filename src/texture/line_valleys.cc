@@ -4,6 +4,7 @@
 #include <cmath>
 #include <limits>
 
+#include "base/vectorize.h"
 #include "texture/channel_kernel.h"
 #include "texture/surface.h"
 
@@ -13,23 +14,36 @@ namespace {
 constexpr double kStepMm = 0.25;
 constexpr double kMinSpacing = 0.45;  // of the pitch
 
+// From each of a row's first `starts` pixels, the sum of `step` pixels, and not 0 if one is off the
+// field. All are summed although few are wanted: neighbours are what vectors hold.
+LAYGAUGE_WIDE_VECTORS
+void SumOnwards(const float* value, const std::uint8_t* region, int step, int starts,
+                float* __restrict sums, std::uint8_t* __restrict off) {
+  std::fill(sums, sums + starts, 0.0F);
+  std::fill(off, off + starts, std::uint8_t{0});
+  for (int i = 0; i < step; ++i) {
+    for (int x = 0; x < starts; ++x) sums[x] += value[x + i];
+    for (int x = 0; x < starts; ++x) {
+      off[x] |= region[x + i] ^ static_cast<std::uint8_t>(Region::kField);
+    }
+  }
+}
+
 // Means over `step` columns of the field, one row a block; NaN where a pixel is off the field.
 cv::Mat BlockMeans(const AlignedField& field, int step) {
   const int blocks = field.relative.cols / step;
   cv::Mat means(field.relative.rows, blocks, CV_32FC1);
+  const int starts = field.relative.cols - step + 1;
+  std::vector<float> sums(static_cast<std::size_t>(starts));
+  std::vector<std::uint8_t> off(sums.size());
   for (int y = 0; y < field.relative.rows; ++y) {
-    const auto* value = field.relative.ptr<float>(y);
-    const auto* region = field.regions.ptr<std::uint8_t>(y);
+    SumOnwards(field.relative.ptr<float>(y), field.regions.ptr<std::uint8_t>(y), step, starts,
+               sums.data(), off.data());
     auto* mean = means.ptr<float>(y);
-    for (int block = 0; block < blocks; ++block, value += step, region += step) {
-      float sum = 0;
-      unsigned other = 0;
-      for (int i = 0; i < step; ++i) {
-        sum += value[i];
-        other |= region[i] ^ static_cast<unsigned>(Region::kField);
-      }
-      mean[block] =
-          other == 0 ? sum / static_cast<float>(step) : std::numeric_limits<float>::quiet_NaN();
+    for (int block = 0; block < blocks; ++block) {
+      const auto start = static_cast<std::size_t>(block) * static_cast<std::size_t>(step);
+      mean[block] = off[start] == 0 ? sums[start] / static_cast<float>(step)
+                                    : std::numeric_limits<float>::quiet_NaN();
     }
   }
   return means.t();

@@ -67,15 +67,17 @@ Peak StrongestPeak(const FieldSpectrum& spectrum, double low_per_mm, double high
 }
 
 double PeakRatio(const FieldSpectrum& spectrum, const Peak& peak) {
-  const cv::Point2d at = FrequencyOf(spectrum, peak.bin.x, peak.bin.y);
+  constexpr double kReachBins = 1.5;
+  const cv::Point2d at = FrequencyOf(spectrum, peak.bin.x, peak.bin.y) / spectrum.bin_per_mm;
   const double radius = std::hypot(at.x, at.y);
+  const double outer = (radius + kReachBins) * (radius + kReachBins);
+  const double inner = radius > kReachBins ? (radius - kReachBins) * (radius - kReachBins) : -1;
   std::vector<float> ring;
-  for (int ky = 0; ky < spectrum.power.rows; ++ky) {
+  for (int row = 0; row < spectrum.power.rows; ++row) {
+    const double ky = row > spectrum.side_px / 2 ? row - spectrum.side_px : row;
     for (int kx = 0; kx < spectrum.power.cols; ++kx) {
-      const cv::Point2d f = FrequencyOf(spectrum, kx, ky);
-      if (std::abs(std::hypot(f.x, f.y) - radius) < 1.5 * spectrum.bin_per_mm) {
-        ring.push_back(spectrum.power.at<float>(ky, kx));
-      }
+      const double square = kx * kx + ky * ky;
+      if (square > inner && square < outer) ring.push_back(spectrum.power.at<float>(row, kx));
     }
   }
   const auto middle = ring.begin() + static_cast<std::ptrdiff_t>(ring.size() / 2);

@@ -21,9 +21,10 @@ Surface MakeSurface(const Patch& patch, const CouponDescription& coupon) {
   const auto pitch_mm =
       surface.lines ? std::optional<double>(surface.lines->pitch_mm) : std::nullopt;
   surface.valleys = FindLineValleys(surface.aligned, pitch_mm, patch.blur_sd_mm);
+  const ReducedPatch reduced(patch);
   surface.torn = FindTornArea(
-      patch, surface.lines ? std::optional<double>(surface.lines->lay_deg) : std::nullopt);
-  surface.top = MakeTopView(patch, lay, surface.torn);
+      reduced, surface.lines ? std::optional<double>(surface.lines->lay_deg) : std::nullopt);
+  surface.top = MakeTopView(reduced, lay, surface.torn);
   if (!surface.torn.Failed()) {
     surface.scars = FindTracks(surface.top);
   }

@@ -1,6 +1,5 @@
 #include "texture/tile_transform.h"
 
-
 #include "base/vectorize.h"
 
 namespace laygauge {

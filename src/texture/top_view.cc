@@ -6,10 +6,11 @@
 #include <opencv2/imgproc.hpp>
 #include <vector>
 
+#include "base/vectorize.h"
+
 namespace laygauge {
 namespace {
 
-constexpr double kReducedPxPerMm = 10;
 constexpr double kWallSeamMm = 0.5;
 constexpr double kTornSeamMm = 2;
 
@@ -24,11 +25,12 @@ cv::Mat Square(double radius) {
   return cv::Mat::ones(side, side, CV_8UC1);
 }
 
-// CV_8UC1, 255 where the reduced patch is searched.
-cv::Mat SearchedPart(const cv::Mat& regions, double px_per_mm, const TornArea& torn) {
+// CV_8UC1, 255 where the patch is searched.
+cv::Mat SearchedPart(const ReducedPatch& patch, const TornArea& torn) {
   cv::Mat searched;
-  cv::erode(regions >= static_cast<int>(Region::kMargin), searched, Square(kWallSeamMm * px_per_mm),
-            {-1, -1}, 1, cv::BORDER_CONSTANT, cv::Scalar::all(0));
+  cv::erode(patch.regions >= static_cast<int>(Region::kMargin), searched,
+            Square(kWallSeamMm * patch.px_per_mm), {-1, -1}, 1, cv::BORDER_CONSTANT,
+            cv::Scalar::all(0));
   if (torn.area_pct > 0) {
     cv::Mat seam;
     cv::dilate(torn.torn, seam, Disk(kTornSeamMm * torn.cells_per_mm));
@@ -50,19 +52,53 @@ cv::Rect TurnedBounds(const cv::Rect& box, cv::Point2d along, cv::Point2d across
   return {bounds.x - 1, bounds.y - 1, bounds.width + 2, bounds.height + 2};
 }
 
+// Of a row: sums over the searched pixels before each column, with `half` columns that add nothing
+// before the first and after the last.
+struct SumsBefore {
+  SumsBefore(int columns, int half_window)
+      : cols(columns),
+        half(half_window),
+        sums(static_cast<std::size_t>(cols + 2 * half + 1), 0.0),
+        counts(sums.size(), 0) {}
+
+  void Fill(const float* value, const std::uint8_t* on) {
+    double sum = 0;
+    int count = 0;
+    for (int x = 0; x < cols; ++x) {
+      sum += on[x] != 0 ? value[x] : 0.F;
+      count += on[x] != 0 ? 1 : 0;
+      sums[x + half + 1] = sum;
+      counts[x + half + 1] = count;
+    }
+    std::fill(sums.end() - half, sums.end(), sum);
+    std::fill(counts.end() - half, counts.end(), count);
+  }
+
+  int cols;
+  int half;
+  std::vector<double> sums;
+  std::vector<int> counts;
+};
+
+// A row less its mean over the window about each pixel; 0 where not searched.
+LAYGAUGE_WIDE_VECTORS
+void RemoveMean(const float* value, const std::uint8_t* on, const SumsBefore& before,
+                float* __restrict out) {
+  const double* sums = before.sums.data();
+  const int* counts = before.counts.data();
+  const int window = 2 * before.half + 1;
+  for (int x = 0; x < before.cols; ++x) {
+    const auto sum = static_cast<float>(sums[x + window] - sums[x]);
+    const auto count = static_cast<float>(std::max(counts[x + window] - counts[x], 1));
+    const float one = on[x] != 0 ? 1.F : 0.F;
+    out[x] = one * (value[x] - sum / count);
+  }
+}
+
 }  // namespace
 
-TopView MakeTopView(const Patch& patch, double lay_deg, const TornArea& torn) {
-  const int reduction =
-      std::max(1, static_cast<int>(std::lround(patch.px_per_mm / kReducedPxPerMm)));
-  const double reduced_px_per_mm = patch.px_per_mm / reduction;
-  const cv::Size size(patch.relative.cols / reduction, patch.relative.rows / reduction);
-  const cv::Rect whole(0, 0, size.width * reduction, size.height * reduction);
-  cv::Mat reduced;
-  cv::Mat regions;
-  cv::resize(patch.relative(whole), reduced, size, 0, 0, cv::INTER_AREA);
-  cv::resize(patch.regions(whole), regions, size, 0, 0, cv::INTER_NEAREST);
-  const cv::Mat searched = SearchedPart(regions, reduced_px_per_mm, torn);
+TopView MakeTopView(const ReducedPatch& patch, double lay_deg, const TornArea& torn) {
+  const cv::Mat searched = SearchedPart(patch, torn);
 
   TopView view;
   view.px_per_mm = kTopViewPxPerMm;
@@ -73,21 +109,20 @@ TopView MakeTopView(const Patch& patch, double lay_deg, const TornArea& torn) {
   const double lay = lay_deg * std::numbers::pi / 180;
   const cv::Point2d along(std::cos(lay), -std::sin(lay));
   const cv::Point2d across(-along.y, along.x);
-  const double scale = kTopViewPxPerMm / reduced_px_per_mm;
+  const double scale = kTopViewPxPerMm / patch.px_per_mm;
   const cv::Rect bounds = TurnedBounds(box, along, across, scale);
   const cv::Point2d step_x = along / scale;
   const cv::Point2d step_y = across / scale;
   const cv::Point2d start = step_x * bounds.x + step_y * bounds.y;
   const cv::Matx23d reduced_from_view(step_x.x, step_y.x, start.x, step_x.y, step_y.y, start.y);
-  cv::warpAffine(reduced, view.relative, reduced_from_view, bounds.size(),
+  cv::warpAffine(patch.relative, view.relative, reduced_from_view, bounds.size(),
                  cv::INTER_LINEAR | cv::WARP_INVERSE_MAP);
   cv::warpAffine(searched, view.searched, reduced_from_view, bounds.size(),
                  cv::INTER_NEAREST | cv::WARP_INVERSE_MAP);
   view.relative.setTo(0, view.searched == 0);
   view.searched_cm2 = cv::countNonZero(view.searched) / std::pow(kTopViewPxPerMm * 10, 2);
-  const cv::Point2d origin =
-      (patch.origin_px + cv::Point2d(0.5, 0.5)) / reduction - cv::Point2d(0.5, 0.5);
-  const double mm = 1 / reduced_px_per_mm;
+  const cv::Point2d& origin = patch.origin_px;
+  const double mm = 1 / patch.px_per_mm;
   view.coupon_from_view = {step_x.x * mm, step_y.x * mm, (start.x - origin.x) * mm,
                            step_x.y * mm, step_y.y * mm, (start.y - origin.y) * mm};
   return view;
@@ -96,24 +131,10 @@ TopView MakeTopView(const Patch& patch, double lay_deg, const TornArea& torn) {
 cv::Mat RemoveAlongRows(const cv::Mat& image, const TopView& view, double window_mm) {
   const int half = static_cast<int>(std::lround(window_mm * view.px_per_mm / 2));
   cv::Mat rest(image.size(), CV_32FC1);
-  // Of the searched pixels before each column.
-  std::vector<double> sums(static_cast<size_t>(image.cols) + 1, 0.0);
-  std::vector<int> counts(sums.size(), 0);
+  SumsBefore before(image.cols, half);
   for (int y = 0; y < image.rows; ++y) {
-    const auto* value = image.ptr<float>(y);
-    const auto* on = view.searched.ptr<std::uint8_t>(y);
-    auto* out = rest.ptr<float>(y);
-    for (int x = 0; x < image.cols; ++x) {
-      sums[x + 1] = sums[x] + (on[x] != 0 ? value[x] : 0.F);
-      counts[x + 1] = counts[x] + (on[x] != 0 ? 1 : 0);
-    }
-    for (int x = 0; x < image.cols; ++x) {
-      const int from = std::max(x - half, 0);
-      const int to = std::min(x + half + 1, image.cols);
-      const auto sum = static_cast<float>(sums[to] - sums[from]);
-      const auto count = static_cast<float>(std::max(counts[to] - counts[from], 1));
-      out[x] = on[x] != 0 ? value[x] - sum / count : 0.F;
-    }
+    before.Fill(image.ptr<float>(y), view.searched.ptr<std::uint8_t>(y));
+    RemoveMean(image.ptr<float>(y), view.searched.ptr<std::uint8_t>(y), before, rest.ptr<float>(y));
   }
   return rest;
 }

@@ -2,7 +2,7 @@
 
 #include <opencv2/core.hpp>
 
-#include "coupon/patch.h"
+#include "texture/reduced_patch.h"
 #include "texture/torn_area.h"
 
 namespace laygauge {
@@ -26,7 +26,7 @@ struct TopView {
 inline constexpr double kTopViewPxPerMm = 20.0 / 3;
 
 // Torn areas, with a seam of 2 mm, are not searched.
-[[nodiscard]] TopView MakeTopView(const Patch& patch, double lay_deg, const TornArea& torn);
+[[nodiscard]] TopView MakeTopView(const ReducedPatch& patch, double lay_deg, const TornArea& torn);
 
 // `image` minus its mean over `window_mm` along the row, of searched pixels only: lines that run
 // along the rows go, what crosses them stays. 0 where not searched.

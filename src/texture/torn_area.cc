@@ -14,7 +14,6 @@
 namespace laygauge {
 namespace {
 
-constexpr double kGradientPxPerMm = 10;
 constexpr double kSmoothMm = 0.09;
 constexpr double kSeamMm = 0.4;  // next to a wall its seam shows, not the lines
 constexpr int kPixelsPerCell = 2;
@@ -32,26 +31,22 @@ cv::Mat Square(double radius) {
   return cv::Mat::ones(side, side, CV_8UC1);
 }
 
-// The coupon's top without its walls, at the scale of the gradients.
+// The coupon's top without its walls, smoothed for gradients.
 struct Top {
   cv::Mat relative;
-  cv::Mat regions;
   cv::Mat judged;  // CV_8UC1
   double px_per_mm = 0;
-  int reduction = 1;
 };
 
-Top ReduceTop(const Patch& patch) {
+Top SmoothTop(const ReducedPatch& patch) {
   Top top;
-  top.reduction = std::max(1, static_cast<int>(std::lround(patch.px_per_mm / kGradientPxPerMm)));
-  top.px_per_mm = patch.px_per_mm / top.reduction;
-  const cv::Size size(patch.relative.cols / top.reduction, patch.relative.rows / top.reduction);
-  const cv::Rect whole(0, 0, size.width * top.reduction, size.height * top.reduction);
-  cv::resize(patch.relative(whole), top.relative, size, 0, 0, cv::INTER_AREA);
-  cv::resize(patch.regions(whole), top.regions, size, 0, 0, cv::INTER_NEAREST);
-  cv::erode(top.regions >= static_cast<int>(Region::kMargin), top.judged,
+  top.px_per_mm = patch.px_per_mm;
+  cv::erode(patch.regions >= static_cast<int>(Region::kMargin), top.judged,
             Square(kSeamMm * top.px_per_mm));
   const int side = 2 * static_cast<int>(std::ceil(2 * kSmoothMm * top.px_per_mm)) + 1;
+  // Off the coupon a patch may hold anything; the seam is wider than what smoothing mixes.
+  patch.relative.copyTo(top.relative);
+  top.relative.setTo(1, patch.regions < static_cast<int>(Region::kMargin));
   cv::GaussianBlur(top.relative, top.relative, {side, side}, kSmoothMm * top.px_per_mm);
   return top;
 }
@@ -86,7 +81,7 @@ struct Directions {
   cv::Mat count;  // judged pixels
 };
 
-// The same for each pixel of a row.
+// The same for each column of pixels, over a row of cells.
 struct DirectionRow {
   std::vector<float> cosine;
   std::vector<float> sine;
@@ -95,29 +90,41 @@ struct DirectionRow {
   std::vector<float> count;
 };
 
-// The row between its first and last pixel; `floor` is added to squared gradients.
+// Adds the row between its first and last pixel; `floor` is added to squared gradients. What is not
+// judged counts nothing.
 LAYGAUGE_WIDE_VECTORS
-void FindDirections(const float* above, const float* here, const float* below,
-                    const std::uint8_t* judged, float floor, DirectionRow& row) {
-  for (size_t x = 1; x + 1 < row.count.size(); ++x) {
-    const bool on = judged[x] != 0;
-    const float gx = on ? here[x + 1] - here[x - 1] : 0.F;
-    const float gy = on ? below[x] - above[x] : 0.F;
+void FindDirections(const float* __restrict above, const float* __restrict here,
+                    const float* __restrict below, const std::uint8_t* __restrict judged,
+                    float floor, DirectionRow& row) {
+  float* __restrict cosine = row.cosine.data();
+  float* __restrict sine = row.sine.data();
+  float* __restrict weight = row.weight.data();
+  float* __restrict squares = row.square.data();
+  float* __restrict count = row.count.data();
+  const int end = static_cast<int>(row.count.size()) - 1;
+  for (int x = 1; x < end; ++x) {
+    const float one = judged[x] != 0 ? 1.F : 0.F;
+    const float gx = here[x + 1] - here[x - 1];
+    const float gy = below[x] - above[x];
     const float square = gx * gx + gy * gy;
-    const float scale = 1 / (square + floor);
-    row.cosine[x] = (gx * gx - gy * gy) * scale;
-    row.sine[x] = 2 * gx * gy * scale;
-    row.weight[x] = square * scale;
-    row.square[x] = square;
-    row.count[x] = on ? 1.F : 0.F;
+    const float scale = one / (square + floor);
+    cosine[x] += (gx * gx - gy * gy) * scale;
+    sine[x] += 2 * gx * gy * scale;
+    weight[x] += square * scale;
+    squares[x] += one * square;
+    count[x] += one;
   }
 }
 
-void AddToCells(const std::vector<float>& pixels, cv::Mat& cells, int row) {
+// The sums of a row of cells; the pixels' start anew.
+void MoveToCells(std::vector<float>& pixels, cv::Mat& cells, int row) {
   auto* out = cells.ptr<float>(row);
   for (int cell = 0; cell < cells.cols; ++cell) {
-    for (int i = 0; i < kPixelsPerCell; ++i) out[cell] += pixels[cell * kPixelsPerCell + i];
+    float sum = 0;
+    for (int i = 0; i < kPixelsPerCell; ++i) sum += pixels[cell * kPixelsPerCell + i];
+    out[cell] = sum;
   }
+  std::fill(pixels.begin(), pixels.end(), 0.F);
 }
 
 Directions SumDirections(const Top& top, double window_mm) {
@@ -125,21 +132,24 @@ Directions SumDirections(const Top& top, double window_mm) {
   Directions sums;
   for (cv::Mat* m : {&sums.cosine, &sums.sine, &sums.weight, &sums.square, &sums.count}) {
     m->create(cells, CV_32FC1);
-    m->setTo(0);
   }
   const float floor = std::max(MedianSquaredGradient(top), 1e-12F);
   DirectionRow row;
   for (auto* part : {&row.cosine, &row.sine, &row.weight, &row.square, &row.count}) {
     part->assign(static_cast<size_t>(cells.width) * kPixelsPerCell, 0.F);
   }
-  for (int y = 1; y + 1 < cells.height * kPixelsPerCell; ++y) {
-    FindDirections(top.relative.ptr<float>(y - 1), top.relative.ptr<float>(y),
-                   top.relative.ptr<float>(y + 1), top.judged.ptr<std::uint8_t>(y), floor, row);
-    AddToCells(row.cosine, sums.cosine, y / kPixelsPerCell);
-    AddToCells(row.sine, sums.sine, y / kPixelsPerCell);
-    AddToCells(row.weight, sums.weight, y / kPixelsPerCell);
-    AddToCells(row.square, sums.square, y / kPixelsPerCell);
-    AddToCells(row.count, sums.count, y / kPixelsPerCell);
+  const int last = cells.height * kPixelsPerCell - 1;
+  for (int cell = 0; cell < cells.height; ++cell) {
+    const int first = cell * kPixelsPerCell;
+    for (int y = std::max(first, 1); y < std::min(first + kPixelsPerCell, last); ++y) {
+      FindDirections(top.relative.ptr<float>(y - 1), top.relative.ptr<float>(y),
+                     top.relative.ptr<float>(y + 1), top.judged.ptr<std::uint8_t>(y), floor, row);
+    }
+    MoveToCells(row.cosine, sums.cosine, cell);
+    MoveToCells(row.sine, sums.sine, cell);
+    MoveToCells(row.weight, sums.weight, cell);
+    MoveToCells(row.square, sums.square, cell);
+    MoveToCells(row.count, sums.count, cell);
   }
   const int side = OddCells(window_mm * top.px_per_mm / kPixelsPerCell);
   for (cv::Mat* m : {&sums.cosine, &sums.sine, &sums.weight, &sums.square}) {
@@ -236,6 +246,21 @@ cv::Mat MarkTorn(const Alignment& alignment, const cv::Mat& wide, const cv::Mat&
   return torn;
 }
 
+// Without what the disk does not fit into. Most coupons have few marks or none: only their bounds
+// are looked at, with room for the disk.
+cv::Mat Opened(const cv::Mat& marks, const cv::Mat& disk) {
+  cv::Mat opened = cv::Mat::zeros(marks.size(), CV_8UC1);
+  const cv::Rect bounds = cv::boundingRect(marks);
+  const cv::Point room(disk.size());
+  const cv::Rect around =
+      cv::Rect(bounds.tl() - room, bounds.br() + room) & cv::Rect(cv::Point(), marks.size());
+  if (!bounds.empty()) {
+    cv::morphologyEx(marks(around).clone(), opened(around), cv::MORPH_OPEN, disk, {-1, -1}, 1,
+                     cv::BORDER_CONSTANT, cv::Scalar::all(0));
+  }
+  return opened;
+}
+
 void Need(bool holds, const char* field, double value, const char* rule) {
   if (!holds) {
     throw BadOption(fmt::format("{} is {}: {}", field, value, rule));
@@ -255,17 +280,17 @@ void TornAreaOptions::Check() const {
   Need(min_width_mm > 0, "min_width_mm", min_width_mm, "more than 0");
 }
 
-TornArea FindTornArea(const Patch& patch, std::optional<double> lay_deg,
+TornArea FindTornArea(const ReducedPatch& patch, std::optional<double> lay_deg,
                       const TornAreaOptions& options) {
   options.Check();
-  const Top top = ReduceTop(patch);
+  const Top top = SmoothTop(patch);
   const Directions sums = SumDirections(top, options.window_mm);
   TornArea area;
   area.cells_per_mm = top.px_per_mm / kPixelsPerCell;
-  const double reduction = top.reduction * kPixelsPerCell;
-  area.origin_cell = (patch.origin_px + cv::Point2d(0.5, 0.5)) / reduction - cv::Point2d(0.5, 0.5);
+  area.origin_cell =
+      (patch.origin_px + cv::Point2d(0.5, 0.5)) / kPixelsPerCell - cv::Point2d(0.5, 0.5);
   const cv::Mat judged = sums.count > 0;
-  cv::resize(top.regions, area.field, judged.size(), 0, 0, cv::INTER_NEAREST);
+  cv::resize(patch.regions, area.field, judged.size(), 0, 0, cv::INTER_NEAREST);
   area.field = area.field == static_cast<int>(Region::kField);
   const Alignment alignment = AlignWith(ExpectedAngle(lay_deg, sums, judged), sums);
   const cv::Mat textured = Textured(sums, judged, top.px_per_mm, options);
@@ -274,9 +299,8 @@ TornArea FindTornArea(const Patch& patch, std::optional<double> lay_deg,
   const double median = shows ? MedianOn(alignment.along, area.field) : 0;
   const cv::Mat wide =
       Widen(alignment.along, judged, OddCells(options.window_mm * area.cells_per_mm));
-  cv::morphologyEx(MarkTorn(alignment, wide, judged, textured, median, options), area.torn,
-                   cv::MORPH_OPEN, Disk(options.min_width_mm / 2 * area.cells_per_mm), {-1, -1}, 1,
-                   cv::BORDER_CONSTANT, cv::Scalar::all(0));
+  area.torn = Opened(MarkTorn(alignment, wide, judged, textured, median, options),
+                     Disk(options.min_width_mm / 2 * area.cells_per_mm));
   const int field_cells = cv::countNonZero(area.field);
   if (field_cells > 0) {
     area.area_pct = 100.0 * cv::countNonZero(area.torn & area.field) / field_cells;

@@ -3,7 +3,7 @@
 #include <opencv2/core.hpp>
 #include <optional>
 
-#include "coupon/patch.h"
+#include "texture/reduced_patch.h"
 
 namespace laygauge {
 
@@ -40,7 +40,7 @@ struct TornArea {
 // so that a few steep edges (scars, blobs) cannot turn an area. After Bigun and Granlund, "Optimal
 // orientation detection of linear symmetry", ICCV 1987; the weighting is ours.
 // `lay_deg`: of the coupon's lines; none: the surface's own prevailing direction.
-[[nodiscard]] TornArea FindTornArea(const Patch& patch, std::optional<double> lay_deg,
+[[nodiscard]] TornArea FindTornArea(const ReducedPatch& patch, std::optional<double> lay_deg,
                                     const TornAreaOptions& options = {});
 
 }  // namespace laygauge

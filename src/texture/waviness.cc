@@ -5,9 +5,11 @@
 #include <algorithm>
 #include <cmath>
 #include <numbers>
+#include <numeric>
 #include <opencv2/imgproc.hpp>
 
 #include "base/statistics.h"
+#include "base/vectorize.h"
 #include "texture/form.h"
 
 namespace laygauge {
@@ -20,6 +22,17 @@ struct CellField {
   double cell_mm = 0;
   double width_mm = 0;  // the shorter side of the field's bounds
 };
+
+// Adds the pixels of a row that lie in the field.
+LAYGAUGE_WIDE_VECTORS
+void AddRow(const float* relative, const std::uint8_t* in, int columns, float* __restrict sums,
+            float* __restrict counts) {
+  for (int x = 0; x < columns; ++x) {
+    const float value = relative[x];
+    sums[x] += in[x] != 0 ? value : 0.0F;
+  }
+  for (int x = 0; x < columns; ++x) counts[x] += in[x] != 0 ? 1.0F : 0.0F;
+}
 
 CellField AverageCells(const Patch& patch, double cell_mm) {
   const cv::Mat field = patch.regions == static_cast<int>(Region::kField);
@@ -39,14 +52,14 @@ CellField AverageCells(const Patch& patch, double cell_mm) {
     for (int y = row * side; y < std::min(bounds.height, (row + 1) * side); ++y) {
       const auto* in = field.ptr<std::uint8_t>(bounds.y + y) + bounds.x;
       const auto* relative = patch.relative.ptr<float>(bounds.y + y) + bounds.x;
-      for (int x = 0; x < bounds.width; ++x) {
-        sums[x] += in[x] != 0 ? relative[x] : 0.0F;
-        counts[x] += in[x] != 0 ? 1.0F : 0.0F;
-      }
+      AddRow(relative, in, bounds.width, sums.data(), counts.data());
     }
-    for (std::size_t x = 0; x < sums.size(); ++x) {
-      cells.values.at<float>(row, static_cast<int>(x) / side) += sums[x];
-      cells.weights.at<float>(row, static_cast<int>(x) / side) += counts[x];
+    auto* values = cells.values.ptr<float>(row);
+    auto* weights = cells.weights.ptr<float>(row);
+    for (int cell = 0; cell < size.width; ++cell) {
+      const auto from = static_cast<std::ptrdiff_t>(cell) * side;
+      values[cell] = std::accumulate(&sums[from], &sums[from] + side, 0.0F);
+      weights[cell] = std::accumulate(&counts[from], &counts[from] + side, 0.0F);
     }
   }
   for (auto v = cells.values.begin<float>(), w = cells.weights.begin<float>();
