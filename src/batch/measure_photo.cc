@@ -83,6 +83,7 @@ CouponRecord MeasureWell(const PhotoStages& stages, const Well& well, std::optio
   record.noise_sd = patch->noise_sd;
   record.blur_sd_mm = patch->blur_sd_mm;
   MeasureTexture(*patch, stages.coupon, record);
+  if (!stages.options.keep_patches) patch.reset();
   return record;
 }
 

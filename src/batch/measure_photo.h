@@ -30,12 +30,14 @@ struct MeasurePhotoOptions {
   RegionOptions regions;
   PatchOptions patch;
   EqualizeOptions equalize;
-  void Check() const;  // throws BadOption
+  bool keep_patches = true;  // 3 MB a coupon, for pictures
+  void Check() const;        // throws BadOption
 };
 
 struct PhotoMeasurement {
   PhotoRecord record;
-  std::vector<std::optional<Patch>> patches;  // parallel to record.coupons; none: not measured
+  // Parallel to record.coupons; none: not measured, or not to be kept.
+  std::vector<std::optional<Patch>> patches;
 };
 
 // Measures every well of the sheet, on all of OpenCV's threads. A well that cannot be measured is

@@ -74,6 +74,7 @@ Expected<ScoreRunRequest> RequestOf(const ScoreOptions& options) {
   }
   request.each_take = options.each_take;
   request.with_loss = options.with_loss;
+  request.measure.keep_patches = options.pictures != "none";
   request.measure.regions.px_per_mm = options.px_per_mm;
   request.camera.threads = std::max(1, cv::getNumThreads());
   request.camera.top_height_mm = request.coupon.thickness_mm;
