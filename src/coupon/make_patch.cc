@@ -12,25 +12,12 @@
 namespace laygauge {
 namespace {
 
-// The light falls off smoothly: a straight line over 1.6 mm of it errs by less than 1e-4.
-constexpr int kLightStep_px = 32;
-
-// 1 / light on the patch's row, at every kLightStep_px.
-void FillInverseLight(const Light& light, const PlaneFrame& frame, int y,
-                      std::vector<float>& nodes) {
-  for (size_t i = 0; i < nodes.size(); ++i) {
-    const cv::Point2d at =
-        frame.SheetFromFrame({static_cast<double>(i * kLightStep_px), static_cast<double>(y)});
-    nodes[i] = static_cast<float>(1 / light.At(at.x, at.y));
-  }
-}
-
 constexpr float kClip = 0.985F;
 
 // Sums over the field.
 struct FieldSums {
-  float linear = 0;
-  float levelled = 0;
+  double linear = 0;
+  double levelled = 0;
   int clipped = 0;  // field pixels at or above the clip
 };
 
@@ -78,42 +65,40 @@ void LevelStretch(const StretchLight& light, const std::uint8_t* region, int cou
   }
 }
 
-struct FieldMeans {
-  double linear = 0;
-  double levelled = 0;
-  double clipped_pct = 0;
-};
-
-// Divides the picture by the light, in place. The field's means before and after.
-FieldMeans Level(const Light& light, const PlaneFrame& frame, const CouponRegions& regions,
-                 cv::Mat& picture) {
-  const size_t columns = picture.cols / kLightStep_px + 2;
-  std::vector<float> upper(columns);
-  std::vector<float> lower(columns);
-  FillInverseLight(light, frame, 0, lower);
-  FieldMeans means;
-  for (int top = 0; top < picture.rows; top += kLightStep_px) {
-    upper.swap(lower);
-    FillInverseLight(light, frame, top + kLightStep_px, lower);
-    FieldSums sums;  // of few rows: single precision does
-    for (int y = top; y < std::min(top + kLightStep_px, picture.rows); ++y) {
-      const float down = static_cast<float>(y - top) / kLightStep_px;
-      auto* row = picture.ptr<float>(y);
-      const auto* region = regions.regions.ptr<std::uint8_t>(y);
-      for (int x = 0, node = 0; x < picture.cols; x += kLightStep_px, ++node) {
-        const float left = upper[node] + down * (lower[node] - upper[node]);
-        const float right = upper[node + 1] + down * (lower[node + 1] - upper[node + 1]);
-        LevelStretch({left, (right - left) / kLightStep_px}, region + x,
-                     std::min(kLightStep_px, picture.cols - x), row + x, sums);
+// Divides a patch by the light, stretch by stretch as it is made.
+class Leveller {
+ public:
+  Leveller(const Light& light, const PlaneFrame& frame, const cv::Mat& regions)
+      : regions_(regions), columns_(frame.size_px.width / kStretch_px + 2) {
+    const int rows = frame.size_px.height / kStretch_px + 2;
+    for (int row = 0; row < rows; ++row) {
+      for (int column = 0; column < columns_; ++column) {
+        const cv::Point2d at = frame.SheetFromFrame(cv::Point2d(column, row) * kStretch_px);
+        inverse_.push_back(static_cast<float>(1 / light.At(at.x, at.y)));
       }
     }
-    means.linear += sums.linear;
-    means.levelled += sums.levelled;
-    means.clipped_pct += 100.0 * sums.clipped;
   }
-  const auto count = static_cast<double>(regions.field_pixels);
-  return {means.linear / count, means.levelled / count, means.clipped_pct / count};
-}
+
+  void operator()(const cv::Point& first, int count, float* values) {
+    const float* upper = &inverse_[first.y / kStretch_px * columns_ + first.x / kStretch_px];
+    const float* lower = upper + columns_;
+    const float down = static_cast<float>(first.y % kStretch_px) / kStretch_px;
+    const float left = upper[0] + down * (lower[0] - upper[0]);
+    const float right = upper[1] + down * (lower[1] - upper[1]);
+    LevelStretch({left, (right - left) / kStretch_px},
+                 regions_.ptr<std::uint8_t>(first.y) + first.x, count, values, sums_);
+  }
+
+  [[nodiscard]] const FieldSums& sums() const { return sums_; }
+
+ private:
+  const cv::Mat& regions_;
+  int columns_;
+  // 1 / light at every kStretch_px. It falls off smoothly: a straight line over 1.6 mm of it errs
+  // by less than 1e-4.
+  std::vector<float> inverse_;
+  FieldSums sums_;
+};
 
 }  // namespace
 
@@ -143,22 +128,24 @@ Expected<Patch> MakePatch(const Photo& photo, const View& view, const Light& lig
   frame.turn_deg = placement.turn_deg;
   frame.height_mm = thickness_mm;
   Patch patch;
-  patch.relative = Rectify(photo, view, frame);
+  Leveller leveller(light, frame, regions.regions);
+  patch.relative = Rectify(photo, view, frame, std::ref(leveller));
   patch.regions = regions.regions;
   patch.px_per_mm = regions.px_per_mm;
   patch.origin_px = regions.origin_px;
-  const FieldMeans means = Level(light, frame, regions, patch.relative);
-  if (means.clipped_pct > options.most_clipped_pct) {
-    return Unmeasurable(
-        fmt::format("{:.1f} % of the coupon is over-exposed; take the photo with less exposure",
-                    means.clipped_pct));
+  const auto count = static_cast<double>(regions.field_pixels);
+  const double clipped_pct = 100 * leveller.sums().clipped / count;
+  if (clipped_pct > options.most_clipped_pct) {
+    return Unmeasurable(fmt::format(
+        "{:.1f} % of the coupon is over-exposed; take the photo with less exposure", clipped_pct));
   }
-  if (means.linear < options.darkest_level) {
+  const double linear = leveller.sums().linear / count;
+  if (linear < options.darkest_level) {
     return Unmeasurable(
         fmt::format("the coupon is too dark: its mean is {:.2f} % of full scale; use more exposure",
-                    100 * means.linear));
+                    100 * linear));
   }
-  patch.level = means.levelled;
+  patch.level = leveller.sums().levelled / count;
   patch.relative *= 1 / patch.level;
   return patch;
 }

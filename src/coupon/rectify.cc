@@ -14,7 +14,7 @@
 namespace laygauge {
 namespace {
 
-constexpr int kNodeStep_px = 32;
+constexpr int kNodeStep_px = kStretch_px;
 constexpr int kPhases = 512;  // a sample's position is rounded to 1/512 px
 
 // The photo's pixels at the frame's nodes, kNodeStep_px apart.
@@ -166,7 +166,7 @@ void MapStretch(const NodeMap& map, int column, int node_row, int row, const cv:
 // however the frame is turned in the photo, a square's source stays in the cache.
 template <class Sampler>
 cv::Mat SampleFrame(const NodeMap& map, const cv::Size& size, const cv::Point2f& corner,
-                    Sampler sampler) {
+                    Sampler sampler, const FinishStretch& finish = {}) {
   cv::Mat result(size, CV_32FC1);
   Stretch stretch;
   for (int top = 0; top < size.height; top += kNodeStep_px) {
@@ -174,7 +174,9 @@ cv::Mat SampleFrame(const NodeMap& map, const cv::Size& size, const cv::Point2f&
       stretch.count = std::min(kNodeStep_px, size.width - left);
       for (int y = top; y < std::min(top + kNodeStep_px, size.height); ++y) {
         MapStretch(map, left / kNodeStep_px, top / kNodeStep_px, y - top, corner, stretch);
-        sampler.Sample(stretch, result.ptr<float>(y) + left);
+        float* values = result.ptr<float>(y) + left;
+        sampler.Sample(stretch, values);
+        if (finish) finish({left, y}, stretch.count, values);
       }
     }
   }
@@ -361,7 +363,8 @@ double ResamplingBlurSdMm(double photo_px_per_mm, double px_per_mm) {
   return ResamplingBlurSdPx(photo_px_per_mm / px_per_mm) / photo_px_per_mm;
 }
 
-cv::Mat Rectify(const Photo& photo, const View& view, const PlaneFrame& frame) {
+cv::Mat Rectify(const Photo& photo, const View& view, const PlaneFrame& frame,
+                const FinishStretch& finish) {
   const NodeMap map = MapNodes(view, frame);
   constexpr int kBorder_px = 16;  // beyond it the spline no longer feels where the region was cut
   const cv::Rect region = SourceRegion(map, photo.size(), kBorder_px);
@@ -372,7 +375,8 @@ cv::Mat Rectify(const Photo& photo, const View& view, const PlaneFrame& frame) {
   const cv::Rect inner(1, 1, photo.size().width - 2, photo.size().height - 2);
   const int pad = (region & inner) == region ? 0 : 2;
   if (pad > 0) cv::copyMakeBorder(linear, linear, pad, pad, pad, pad, cv::BORDER_REFLECT_101);
-  return SampleFrame(map, frame.size_px, region.tl(), SplineSampler{{linear, region.size(), pad}});
+  return SampleFrame(map, frame.size_px, region.tl(), SplineSampler{{linear, region.size(), pad}},
+                     finish);
 }
 
 cv::Mat RectifyEncoded(const Photo& photo, const View& view, const PlaneFrame& frame) {

@@ -1,5 +1,6 @@
 #pragma once
 
+#include <functional>
 #include <opencv2/core.hpp>
 
 #include "photo/photo.h"
@@ -33,7 +34,13 @@ struct PlaneFrame {
 // If the photo is finer than the frame, it is blurred first to the frame's resolution (no
 // aliasing). The mapping is exact on a grid of 32 pixels and bilinear between (error below 0.002
 // px at 10 px/mm and more). Outside the photo its edge is repeated; ask IsInPhoto.
-[[nodiscard]] cv::Mat Rectify(const Photo& photo, const View& view, const PlaneFrame& frame);
+//
+// `finish` may change each stretch of a row, as long as it is in the cache: up to kStretch_px
+// pixels from `first`, whose column is a multiple of kStretch_px.
+constexpr int kStretch_px = 32;
+using FinishStretch = std::function<void(const cv::Point& first, int count, float* values)>;
+[[nodiscard]] cv::Mat Rectify(const Photo& photo, const View& view, const PlaneFrame& frame,
+                              const FinishStretch& finish = {});
 
 // Standard deviation, mm, of the blur that Rectify adds where the photo shows `photo_px_per_mm` and
 // the frame has `px_per_mm`; 0 where the photo is no finer than the frame.
