@@ -131,40 +131,39 @@ struct Fitter {
   const WallView& wall;
   Estimate now;
   std::vector<double> profile{};
-  Pose looked_from{};                          // the pose of `looked`
+  Pose looked_from{};                          // the pose of `looked`...
+  Turn looked_turn{0};                         // ...and its turn
   std::vector<std::vector<Extreme>> looked{};  // the extremes across each piece
 
   double Inset_mm(const EdgePiece& piece) const {
     return piece.is_hole ? now.hole_inset_mm : now.outline_inset_mm;
   }
 
-  double Foot_mm(const EdgePiece& piece) const {
-    const Turn turn(now.pose.turn_deg);
+  // `turn` is that of `now`, here and below.
+  double Foot_mm(const EdgePiece& piece, const Turn& turn) const {
     return wall.FootOutward_mm(now.pose.center_mm + turn(piece.middle_mm),
                                turn(piece.middle_outward));
   }
 
   // How far the piece's edge has moved outward since Look().
-  double Moved_mm(const EdgePiece& piece) const {
-    const Turn turn(now.pose.turn_deg);
+  double Moved_mm(const EdgePiece& piece, const Turn& turn) const {
     const cv::Point2d moved = now.pose.center_mm + turn(piece.middle_mm) - looked_from.center_mm -
-                              Turned(piece.middle_mm, looked_from.turn_deg);
+                              looked_turn(piece.middle_mm);
     return moved.dot(turn(piece.middle_outward));
   }
 
-  void TakeProfile(const EdgePiece& piece, int count);
+  void TakeProfile(const EdgePiece& piece, const Turn& turn, int count);
   std::vector<Extreme> Extremes(const EdgePiece& piece, double faintest_per_mm);
   void Look(const std::vector<EdgePiece>& pieces);
-  void AddPiece(const EdgePiece& piece, const std::vector<Extreme>& extremes, double width_mm,
-                Equations& equations) const;
+  void AddPiece(const EdgePiece& piece, const Turn& turn, const std::vector<Extreme>& extremes,
+                double width_mm, Equations& equations) const;
   Equations Improve(const std::vector<EdgePiece>& pieces, double width_mm);
   bool IsSeen(const EdgePiece& piece);
 };
 
 // Mean brightness along the piece, from kProfileReach_mm inward, every kProfileStep_mm outward.
-void Fitter::TakeProfile(const EdgePiece& piece, int count) {
+void Fitter::TakeProfile(const EdgePiece& piece, const Turn& turn, int count) {
   profile.assign(count, 0.0);
-  const Turn turn(now.pose.turn_deg);
   for (size_t i = 0; i < piece.points_mm.size(); ++i) {
     const cv::Point2d outward = turn(piece.outward[i]) * px_per_mm;
     const cv::Point2d edge_px =
@@ -176,9 +175,10 @@ void Fitter::TakeProfile(const EdgePiece& piece, int count) {
 
 // Extremes of slope across the piece, from inward of its edge to outward of its wall's foot.
 std::vector<Extreme> Fitter::Extremes(const EdgePiece& piece, double faintest_per_mm) {
-  const double outermost_mm = std::max(0.0, Foot_mm(piece));
+  const Turn turn(now.pose.turn_deg);
+  const double outermost_mm = std::max(0.0, Foot_mm(piece, turn));
   const int count = static_cast<int>((outermost_mm + 2 * kProfileReach_mm) / kProfileStep_mm) + 1;
-  TakeProfile(piece, count);
+  TakeProfile(piece, turn, count);
   std::vector<double> slope(count, 0.0);
   for (int k = 2; k + 2 < count; ++k) {
     // Differences over four steps and over two: a slope, smoothed over 0.15 mm.
@@ -200,20 +200,21 @@ std::vector<Extreme> Fitter::Extremes(const EdgePiece& piece, double faintest_pe
 // Finds the extremes for the rounds to come, in which the pose moves little.
 void Fitter::Look(const std::vector<EdgePiece>& pieces) {
   looked_from = now.pose;
+  looked_turn = Turn(now.pose.turn_deg);
   looked.clear();
   for (const EdgePiece& piece : pieces) looked.push_back(Extremes(piece, kFaintest_per_mm));
 }
 
-void Fitter::AddPiece(const EdgePiece& piece, const std::vector<Extreme>& extremes, double width_mm,
+void Fitter::AddPiece(const EdgePiece& piece, const Turn& turn,
+                      const std::vector<Extreme>& extremes, double width_mm,
                       Equations& equations) const {
-  const Turn turn(now.pose.turn_deg);
   const cv::Point2d outward = turn(piece.middle_outward);
   const cv::Point2d arm = turn(piece.middle_mm);
   Vector5 row;
   row << outward.x, outward.y, outward.dot({arm.y, -arm.x}), piece.is_hole ? 0.0 : -1.0,
       piece.is_hole ? -1.0 : 0.0;
-  const double moved_mm = Moved_mm(piece);
-  const double foot_mm = Foot_mm(piece);
+  const double moved_mm = Moved_mm(piece, turn);
+  const double foot_mm = Foot_mm(piece, turn);
   const bool foot_visible = foot_mm > kVisibleFoot_mm;
   // Edge and foot too close to be told apart: what is seen lies between the two.
   const double merged_mm = foot_mm > 0 && !foot_visible ? foot_mm / 2 : 0;
@@ -232,7 +233,10 @@ void Fitter::AddPiece(const EdgePiece& piece, const std::vector<Extreme>& extrem
 // One round of least squares: moves `pose` and the insets.
 Equations Fitter::Improve(const std::vector<EdgePiece>& pieces, double width_mm) {
   Equations equations;
-  for (size_t i = 0; i < pieces.size(); ++i) AddPiece(pieces[i], looked[i], width_mm, equations);
+  const Turn turn(now.pose.turn_deg);
+  for (size_t i = 0; i < pieces.size(); ++i) {
+    AddPiece(pieces[i], turn, looked[i], width_mm, equations);
+  }
   for (const int i : {3, 4}) {
     // Known before: as good as 20 mm of edge that is located to the round's width.
     const double weight = 20 * width_mm * width_mm / (kInsetSd_mm * kInsetSd_mm);
@@ -249,7 +253,7 @@ Equations Fitter::Improve(const std::vector<EdgePiece>& pieces, double width_mm)
 
 // Whether an edge lies where the fit has the piece's edge, or its wall's foot.
 bool Fitter::IsSeen(const EdgePiece& piece) {
-  const double foot_mm = Foot_mm(piece);
+  const double foot_mm = Foot_mm(piece, Turn(now.pose.turn_deg));
   const auto extremes = Extremes(piece, kFaintestSeen_per_mm);
   return std::any_of(extremes.begin(), extremes.end(), [&](const Extreme& extreme) {
     return std::abs(extreme.outward_mm + Inset_mm(piece)) < kSeenWithin_mm ||
@@ -285,6 +289,8 @@ EdgeFit FitEdges(const cv::Mat& picture, double px_per_mm, const cv::Point2d& or
                  const std::vector<Pose>& starts) {
   constexpr std::array<double, 6> kWidths_mm = {0.2, 0.14, 0.1, 0.07, 0.07, 0.07};
   constexpr std::array<double, 3> kLastWidths_mm = {0.1, 0.07, 0.07};
+  constexpr int kMostLooks = 3;
+  constexpr double kSettled_mm = 0.002;
   const auto pieces = CutEdges(coupon, 2, 0.1);
   Fitter fitter{picture, px_per_mm, origin_px, wall, {starts.front()}};
   fitter.Look(pieces);
@@ -299,8 +305,12 @@ EdgeFit FitEdges(const cv::Mat& picture, double px_per_mm, const cv::Point2d& or
     best = fitter.now;
   }
   fitter.now = best;
-  fitter.Look(pieces);
-  for (const double width_mm : kLastWidths_mm) last = fitter.Improve(pieces, width_mm);
+  // Extremes are exact where they were looked for: again, as long as that is elsewhere.
+  for (int look = 0; look < kMostLooks; ++look) {
+    fitter.Look(pieces);
+    for (const double width_mm : kLastWidths_mm) last = fitter.Improve(pieces, width_mm);
+    if (cv::norm(fitter.now.pose.center_mm - fitter.looked_from.center_mm) < kSettled_mm) break;
+  }
 
   EdgeFit fit;
   fit.pose = fitter.now.pose;

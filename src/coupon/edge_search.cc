@@ -214,10 +214,10 @@ std::vector<ScoredPose> SearchPoses(const GradientPicture& gradient,
   }
   const auto add = [&](bool holes, double turn_deg, const std::vector<ShiftRow>& rows,
                        std::vector<float>& scores) {
+    const Turn turn(turn_deg);
     for (const EdgePiece& piece : pieces) {
       if (piece.is_hole != holes) continue;
-      scorer.Add(piece, Turn(turn_deg), static_cast<float>(piece.length_mm) / whole_mm, rows,
-                 scores);
+      scorer.Add(piece, turn, static_cast<float>(piece.length_mm) / whole_mm, rows, scores);
     }
   };
 
