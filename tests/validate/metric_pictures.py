@@ -85,7 +85,7 @@ def _example(folder, rows, plate, column, kind):
     marks = [mark for mark in found if mark["kind"] == kind]
     place = _fullest_place(marks) if marks else PLAIN_PLACE_MM
     pictures = folder / "results/pictures"
-    crops = [(f"{plate} {well}: {values[well]:.3g}", _crop(pictures / f"{plate}-{well}.png", place))
+    crops = [(f"{plate} {well}: {round(values[well], 4):.3g}", _crop(pictures / f"{plate}-{well}.png", place))
              for well in (low, high)]
     if marks:
         crops.append(("as found", _crop(pictures / f"{plate}-{high}-found.png", place)))
