@@ -94,7 +94,7 @@ Finding Measure(const Surface& surface) {
     energy = MeasureGradientEnergy(field.relative, mask, field.px_per_mm);
   }
   if (!energy) {
-    const Feature none{std::nullopt, std::nullopt, "the field holds no whole cell of 0.8 mm"};
+    const Feature none{std::nullopt, std::nullopt, "the field holds no whole cell of 1.2 mm"};
     return {std::vector<Feature>(4, none), {}};
   }
   // Without lines the cells' directions are those of noise.
@@ -132,14 +132,16 @@ std::optional<GradientEnergy> MeasureGradientEnergy(const cv::Mat& image, const 
   std::vector<double> yy;
   std::vector<double> coherences;
   std::complex<double> sum = 0;
-  double sum_abs = 0;
+  std::complex<double> weighted = 0;  // by the cells' squared coherence
+  double weights = 0;
   for (const Tensor& cell : cells) {
     xx.push_back(cell.xx);
     yy.push_back(cell.yy);
     const std::complex<double> directed = cell.Directed(options.floor_per_mm2);
     coherences.push_back(std::abs(directed));
     sum += directed;
-    sum_abs += coherences.back();
+    weighted += directed * coherences.back();
+    weights += coherences.back() * coherences.back();
   }
   GradientEnergy result;
   result.along = Mean(xx);
@@ -149,7 +151,7 @@ std::optional<GradientEnergy> MeasureGradientEnergy(const cv::Mat& image, const 
   result.coherence = std::abs(sum) / static_cast<double>(cells.size());
   result.coherence_sd = StandardError(coherences);
   result.orientation_deg = 0.5 * std::arg(sum) * 180 / std::numbers::pi;
-  result.orientation_spread_deg = sum_abs > 0 ? SpreadOf(std::abs(sum) / sum_abs) : 0;
+  result.orientation_spread_deg = weights > 0 ? SpreadOf(std::abs(weighted) / weights) : 0;
   // Of a deviation, for normal data: over sqrt(2 n).
   result.orientation_spread_sd_deg =
       result.orientation_spread_deg / std::sqrt(2.0 * static_cast<double>(cells.size()));
@@ -158,7 +160,7 @@ std::optional<GradientEnergy> MeasureGradientEnergy(const cv::Mat& image, const 
 
 Metric GradientEnergyMetric() {
   return {"gradient_energy",
-          2,
+          3,
           {{"gradient_energy_along_per_mm2", "mean squared slope of reflectance along the lay"},
            {"gradient_energy_across_per_mm2", "mean squared slope of reflectance across the lay"},
            {"gradient_coherence", "how far the slopes of all parts share one direction, 0 to 1"},

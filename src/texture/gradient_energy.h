@@ -7,7 +7,7 @@
 namespace laygauge {
 
 struct GradientEnergyOptions {
-  double cell_mm = 0.8;  // side of the square cells whose orientations are compared
+  double cell_mm = 1.2;  // side of the square cells whose orientations are compared
   // Added to a cell's energy before its coherence: slopes of 0.1 per mm, three to six times the
   // energy that noise and coding put on a smooth top (0.0015 to 0.0034 per mm^2).
   double floor_per_mm2 = 0.01;
@@ -32,7 +32,8 @@ struct GradientEnergy {
 // image: CV_32FC1; mask: CV_8UC1, not 0 in the field.
 // With J the structure tensor of one cell and e the floor, its directed coherence is the complex
 // number c = (Jxx - Jyy + 2 i Jxy) / (Jxx + Jyy + e); coherence = |mean of c|, and the spread is
-// the circular standard deviation of the doubled angles weighted by |c|, halved.
+// the circular standard deviation of the doubled angles, halved, weighted by |c|^2, since what
+// noise does to an angle goes as 1 / |c|.
 // Sources: Krotkov, "Focusing", Int. J. Computer Vision 1 (1987) 223-237, doi:10.1007/BF00127822
 // (Tenengrad, here without a threshold and split in two directions); Bigun & Granlund, "Optimal
 // orientation detection of linear symmetry", ICCV 1987 433-438 (structure tensor, doubled angle,
