@@ -67,6 +67,7 @@ cv::Rect SourceRegion(const NodeMap& map, const cv::Size& photo_size, int border
 
 // In place, along columns, for all columns at once: the recursive filter that turns samples into
 // the coefficients of the cubic spline through them (Unser 1999, box 2), mirrored at the ends.
+LAYGAUGE_WIDE_VECTORS
 void SplineCoefficientsAlongColumns(cv::Mat& image) {
   const float pole = std::sqrt(3.F) - 2;
   const int last = image.rows - 1;
@@ -103,7 +104,7 @@ void SplineCoefficientsAlongColumns(cv::Mat& image) {
 
 // In place, in both directions, but for the gain 6 of either. In strips that stay in the cache.
 void FindSplineCoefficients(cv::Mat& image) {
-  constexpr int kRows = 16;
+  constexpr int kRows = 64;
   constexpr int kColumns = 64;
   cv::Mat turned;
   for (int r = 0; r < image.rows; r += kRows) {
