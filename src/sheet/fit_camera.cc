@@ -7,6 +7,7 @@
 #include <cmath>
 #include <limits>
 #include <memory>
+#include <thread>
 
 #include "sheet/brown.h"
 
@@ -199,7 +200,9 @@ CameraFit FitCamera(CameraFit fit, const std::vector<std::vector<MarkerSighting>
   constexpr double kFinest_px = 0.02;  // what rendering noise-free squares leaves
   ceres::Solver::Options options;
   options.linear_solver_type = ceres::DENSE_SCHUR;
-  options.num_threads = threads;
+  // More than there are cores only draws a warning of the solver's.
+  const auto cores = static_cast<int>(std::thread::hardware_concurrency());
+  options.num_threads = std::min(threads, std::max(1, cores));
   options.max_num_iterations = 100;
   options.function_tolerance = 1e-9;
   options.logging_type = ceres::SILENT;

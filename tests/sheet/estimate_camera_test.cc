@@ -172,6 +172,16 @@ TEST(EstimateCameras, WithoutNoiseTheMarkersAreExplained) {
 // The stated uncertainty is honest: over 100 cameras drawn as the priors say, the error of the
 // scale at the sheet's centre, divided by its stated deviation, has a root mean square of 1. Of 100
 // such values its own deviation is 0.07; the linearisation and the weights' estimate add some.
+TEST(EstimateCameras, MoreThreadsThanCoresAreQuiet) {
+  const SheetSighting sighting = SeePlate("d2");
+  EstimateCameraOptions options;
+  options.threads = 1000;
+  ::testing::internal::CaptureStderr();
+  const auto estimate = EstimateCameras({&sighting, 1}, options)[0];
+  EXPECT_EQ(::testing::internal::GetCapturedStderr(), "");
+  EXPECT_TRUE(estimate.has_value());
+}
+
 TEST(EstimateCameras, TheScalesUncertaintyIsHonest) {
   double squares = 0;
   const int count = 100;
