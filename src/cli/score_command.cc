@@ -2,6 +2,7 @@
 
 #include <fmt/format.h>
 
+#include <algorithm>
 #include <filesystem>
 #include <map>
 #include <memory>
@@ -193,7 +194,8 @@ void NoteUnknown(const std::vector<std::string>& keys, const Terminal& terminal)
 
 int Run(const ScoreOptions& options, const Terminal& terminal) {
   if (options.threads < 0) throw BadOption("--threads: 0 (every core) or more is expected");
-  if (options.threads > 0) cv::setNumThreads(options.threads);
+  // More than there are cores would only draw warnings of the libraries'.
+  if (options.threads > 0) cv::setNumThreads(std::min(options.threads, cv::getNumberOfCPUs()));
   const auto request = RequestOf(options);
   if (!request) return Report(terminal, request.error());
   Folder folder(options.out, options.pictures != "none");

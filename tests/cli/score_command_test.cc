@@ -149,6 +149,12 @@ TEST_F(ScoreCommandTest, TheGoodPhotosAreScoredAndTheBadOneIsReported) {
   EXPECT_TRUE(nlohmann::json::accept(ReadFile(In("out/records/d2.json")).value()));
 }
 
+TEST_F(ScoreCommandTest, ThreadsAreNoMoreThanTheCores) {
+  RunWith({"score", In("missing.jpg"), "--threads", "1000", "--out", In("out")});
+  EXPECT_EQ(cv::getNumThreads(), cv::getNumberOfCPUs());
+  cv::setNumThreads(-1);
+}
+
 TEST_F(ScoreCommandTest, PrintsJsonForPrograms) {
   const Outcome outcome = RunWith({"score", (Samples() / "d2.jpg").string(), "--json", "--pictures",
                                    "none", "--out", In("out")});
