@@ -101,16 +101,20 @@ WindowedTile WindowTile(const Patch& patch, cv::Rect rect, const cv::Mat& window
   return tile;
 }
 
+// Squared magnitudes times `factor`, of pairs of real and imaginary parts.
+LAYGAUGE_WIDE_VECTORS
+void SquareRow(const float* pairs, float factor, int count, float* __restrict squares) {
+  for (int x = 0; x < count; ++x) {
+    squares[x] = factor * (pairs[2 * x] * pairs[2 * x] + pairs[2 * x + 1] * pairs[2 * x + 1]);
+  }
+}
+
 // Squared magnitudes times `scale`.
 cv::Mat Power(const cv::Mat& transform, double scale) {
   const auto factor = static_cast<float>(scale);
   cv::Mat power(transform.size(), CV_32FC1);
   for (int y = 0; y < power.rows; ++y) {
-    const auto* in = transform.ptr<cv::Vec2f>(y);
-    auto* out = power.ptr<float>(y);
-    for (int x = 0; x < power.cols; ++x) {
-      out[x] = factor * (in[x][0] * in[x][0] + in[x][1] * in[x][1]);
-    }
+    SquareRow(transform.ptr<float>(y), factor, power.cols, power.ptr<float>(y));
   }
   return power;
 }

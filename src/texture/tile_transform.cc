@@ -26,6 +26,14 @@ void Unpack(const float* re, const float* im, const float* re_of_negative,
   }
 }
 
+LAYGAUGE_WIDE_VECTORS
+void Interleave(const float* re, const float* im, int count, float* __restrict out) {
+  for (int x = 0; x < count; ++x) {
+    out[2 * x] = re[x];
+    out[2 * x + 1] = im[x];
+  }
+}
+
 }  // namespace
 
 TileTransform::TileTransform(int side) : side_(side), transform_(side) {
@@ -58,8 +66,7 @@ void TileTransform::Apply(const cv::Mat& values, cv::Mat& spectrum) {
   for (int ky = 0; ky < side_; ++ky) {
     const auto* re = by_y_re_.ptr<float>(transform_.Row(ky));
     const auto* im = by_y_im_.ptr<float>(transform_.Row(ky));
-    auto* out = spectrum.ptr<cv::Vec2f>(ky);
-    for (int kx = 0; kx <= half; ++kx) out[kx] = {re[kx], im[kx]};
+    Interleave(re, im, half + 1, spectrum.ptr<float>(ky));
   }
 }
 
