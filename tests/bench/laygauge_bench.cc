@@ -86,7 +86,7 @@ struct Plate {
 // A line of the table.
 struct Row {
   std::string name;
-  int times = 1;  // that the program does it, for this photo
+  int times = 1;  // that the program does it, for this photo; 0: part of another line
   bool is_metric = false;
 };
 
@@ -129,6 +129,7 @@ void AddStages(const Plate& p) {
   Add({"equalised patch", wells}, [&] { return p.Equalized(); });
   Add({"surface: lines, torn areas, scars", wells, true},
       [&] { return MakeSurface(p.patch, p.coupon); });
+  Add({"  of which spectra of the tiles", 0}, [&] { return MeasureFieldSpectrum(p.patch); });
   for (const Metric& metric : MetricTable()) {
     Add({"metric " + std::string(metric.name), wells, true},
         [&] { return metric.measure(p.surface); });
