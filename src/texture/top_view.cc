@@ -120,7 +120,8 @@ TopView MakeTopView(const ReducedPatch& patch, double lay_deg, const TornArea& t
   cv::warpAffine(searched, view.searched, reduced_from_view, bounds.size(),
                  cv::INTER_NEAREST | cv::WARP_INVERSE_MAP);
   view.relative.setTo(0, view.searched == 0);
-  view.searched_cm2 = cv::countNonZero(view.searched) / std::pow(kTopViewPxPerMm * 10, 2);
+  // Before it is turned: the same for every coupon of a drawing, whatever its lay.
+  view.searched_cm2 = cv::countNonZero(searched) / std::pow(patch.px_per_mm * 10, 2);
   const cv::Point2d& origin = patch.origin_px;
   const double mm = 1 / patch.px_per_mm;
   view.coupon_from_view = {step_x.x * mm, step_y.x * mm, (start.x - origin.x) * mm,

@@ -18,7 +18,9 @@ constexpr double kClip = 2.5;        // standard deviations
 constexpr double kUnits = 64;        // of the whole-number image, one standard deviation
 constexpr double kTurnDeg = 4;       // a followed track may turn by, a step
 constexpr double kSwerveCost = 0.4;  // standard deviations that a turn or a sidestep must gain
-constexpr double kLeastSeen = 0.5;   // share of a piece on the searched top
+constexpr double kLumpMm = 1.6;  // the most that one lump or gap, and its shadow, take of a track
+constexpr int kWeakSteps = 2;    // a track may be too weak to follow for so long: 1.2 mm
+constexpr double kLeastSeen = 0.5;  // share of a piece on the searched top
 
 cv::Mat WholeNumbers(const TopView& view, double flatten_mm) {
   const cv::Mat flat = RemoveAlongRows(view.relative, view, flatten_mm);
@@ -52,6 +54,15 @@ struct Piece {
   bool seen = true;   // false: behind a hole or another track
 };
 
+// See FindTracks.
+double Chance(const Track& track, double min_sigmas) {
+  constexpr double kNever = 5.7;
+  constexpr double kSurely = 7.1;
+  const double evidence = (track.sigmas + track.strength) / 2;
+  return std::clamp(std::min((evidence - kNever) / (kSurely - kNever), track.sigmas - min_sigmas),
+                    0.0, 1.0);
+}
+
 // The image, of which tracks are wiped out as they are found.
 class Follower {
  public:
@@ -72,10 +83,13 @@ class Follower {
       if (!sigmas || std::abs(*sigmas) < options_.min_sigmas) {
         continue;
       }
-      Track track = Follow(seed, *sigmas < 0 ? -1 : 1);
+      const int sign = *sigmas < 0 ? -1 : 1;
+      Track track = Follow(seed, sign);
       track.sigmas = std::abs(*sigmas);
+      track.strength = Strength(track.path_px, sign);
+      track.chance = Chance(track, options_.min_sigmas);
       Wipe(track, seed);
-      if (track.length_mm >= options_.min_length_mm) {
+      if (track.chance > 0) {
         tracks.push_back(std::move(track));
       }
     }
@@ -134,19 +148,21 @@ class Follower {
 
   [[nodiscard]] std::vector<Piece> FollowOneWay(Piece last, int way, int sign) const {
     std::vector<Piece> path;
-    size_t kept = 0;
+    size_t kept = 0;  // up to the last piece that is seen, and the one beyond at which it ends
     double hidden_mm = 0;
+    int weak = 0;
     const cv::Rect2d frame(0, 0, image_.cols - 1, image_.rows - 1);
     for (;;) {
       last = Next(last, way, sign);
       hidden_mm = last.seen ? 0 : hidden_mm + options_.step_mm;
-      if (!frame.contains(last.centre) || hidden_mm > options_.max_hidden_mm ||
-          (last.seen && last.sigmas < options_.follow_sigmas)) {
+      if (!frame.contains(last.centre) || hidden_mm > options_.max_hidden_mm) {
         break;
       }
       path.push_back(last);
       if (last.seen) {
         kept = path.size();
+        weak = last.sigmas < options_.follow_sigmas ? weak + 1 : 0;
+        if (weak > kWeakSteps) break;
       }
     }
     path.resize(kept);
@@ -163,21 +179,57 @@ class Follower {
     CutEnds(path);
     Track track;
     for (const Piece& piece : path) {
-      if (!track.path_px.empty() && OnTop(piece.centre)) {
-        track.length_mm += cv::norm(piece.centre - track.path_px.back()) / view_.px_per_mm;
+      if (!track.path_px.empty()) {
+        track.length_mm += LengthOnTop(track.path_px.back(), piece.centre);
       }
       track.path_px.push_back(piece.centre);
     }
     return track;
   }
 
-  [[nodiscard]] bool OnTop(cv::Point2d p) const {
-    return view_.searched.at<std::uint8_t>(cvRound(p.y), cvRound(p.x)) != 0;
+  // The sum along the whole path in units of its spread, without the strongest part that one lump
+  // could give.
+  [[nodiscard]] double Strength(const std::vector<cv::Point2d>& path, int sign) const {
+    std::vector<double> sums{0};
+    for (size_t i = 1; i < path.size(); ++i) {
+      const cv::Point2d way = path[i] - path[i - 1];
+      const double direction_deg = std::atan2(-way.y, way.x) * 180 / std::numbers::pi;
+      const double spread = sums_.SpreadAt(std::fmod(direction_deg + 360, 180));
+      const int steps = cvRound(std::max(std::abs(way.x), std::abs(way.y)));
+      for (int k = 0; k < steps; ++k) {
+        const cv::Point2d p = path[i - 1] + way * (static_cast<double>(k) / steps);
+        const cv::Point pixel(cvRound(p.x), cvRound(p.y));
+        if (seen_.at<std::uint8_t>(pixel) != 0 && spread > 0) {
+          sums.push_back(sums.back() + sign * image_.at<std::int16_t>(pixel) / spread);
+        }
+      }
+    }
+    const auto window = static_cast<size_t>(std::lround(kLumpMm * view_.px_per_mm));
+    constexpr size_t kFewest = 4;
+    if (sums.size() <= window + kFewest) {
+      return 0;
+    }
+    double most = 0;
+    for (size_t i = window; i < sums.size(); ++i) {
+      most = std::max(most, sums[i] - sums[i - window]);
+    }
+    return (sums.back() - most) / std::sqrt(static_cast<double>(sums.size() - 1 - window));
+  }
+
+  [[nodiscard]] double LengthOnTop(cv::Point2d from, cv::Point2d to) const {
+    constexpr int kParts = 4;  // of a step: a pixel each
+    int on_top = 0;
+    for (int i = 0; i < kParts; ++i) {
+      const cv::Point2d p = from + (to - from) * ((i + 0.5) / kParts);
+      on_top += view_.searched.at<std::uint8_t>(cvRound(p.y), cvRound(p.x)) != 0 ? 1 : 0;
+    }
+    return cv::norm(to - from) / view_.px_per_mm * on_top / kParts;
   }
 
   // A piece whose centre is the track's end holds half of it: the ends are where half of the
-  // track's usual strength is left.
-  static void CutEnds(std::vector<Piece>& path) {
+  // track's usual strength is left, between the last piece that has it and the next; or where a
+  // hole or another track begins.
+  void CutEnds(std::vector<Piece>& path) const {
     std::vector<double> strengths;
     for (const Piece& piece : path) {
       if (piece.seen) {
@@ -186,11 +238,44 @@ class Follower {
     }
     const auto at = strengths.begin() + static_cast<std::ptrdiff_t>(strengths.size() * 3 / 4);
     std::nth_element(strengths.begin(), at, strengths.end());
-    const double least = *at / 2;
-    const auto strong = [least](const Piece& p) { return p.seen && p.sigmas >= least; };
-    const auto first = std::find_if(path.begin(), path.end(), strong);
-    const auto last = std::find_if(path.rbegin(), path.rend(), strong).base();
-    path = std::vector<Piece>(first, last);
+    CutFront(path, *at / 2);
+    std::reverse(path.begin(), path.end());
+    CutFront(path, *at / 2);
+    std::reverse(path.begin(), path.end());
+  }
+
+  void CutFront(std::vector<Piece>& path, double least) const {
+    const auto first = std::find_if(path.begin(), path.end(), [least](const Piece& piece) {
+      return piece.seen && piece.sigmas >= least;
+    });
+    Piece end = *first;
+    if (first != path.begin() && (first - 1)->seen) {
+      const Piece& before = *(first - 1);
+      const double share = (first->sigmas - least) / (first->sigmas - before.sigmas);
+      end.centre += (before.centre - first->centre) * share;
+    } else {
+      end.centre += SeenBeyond(*first, path.back().centre);
+    }
+    path.erase(path.begin(), first);
+    path.insert(path.begin(), end);
+  }
+
+  // From a piece's centre away from the other end, as far as the piece can be seen.
+  [[nodiscard]] cv::Point2d SeenBeyond(const Piece& piece, cv::Point2d other_end) const {
+    const double radians = piece.direction_deg * std::numbers::pi / 180;
+    cv::Point2d along(std::cos(radians), -std::sin(radians));
+    if (along.dot(piece.centre - other_end) < 0) along = -along;
+    const int most = cvRound(options_.follow_length_mm / 2 * view_.px_per_mm);
+    int steps = 0;
+    while (steps < most && IsSeen(piece.centre + along * (steps + 1))) {
+      ++steps;
+    }
+    return along * steps;
+  }
+
+  [[nodiscard]] bool IsSeen(cv::Point2d p) const {
+    const cv::Point pixel(cvRound(p.x), cvRound(p.y));
+    return cv::Rect({0, 0}, seen_.size()).contains(pixel) && seen_.at<std::uint8_t>(pixel) != 0;
   }
 
   void Wipe(const Track& track, const Piece& seed) {
@@ -230,7 +315,6 @@ void TrackOptions::Check() const {
   Need(min_angle_deg > 0 && min_angle_deg < 90, "min_angle_deg", min_angle_deg, "between 0 and 90");
   Need(min_sigmas > 0, "min_sigmas", min_sigmas, "more than 0");
   Need(follow_sigmas > 0, "follow_sigmas", follow_sigmas, "more than 0");
-  Need(min_length_mm > 0, "min_length_mm", min_length_mm, "more than 0");
   Need(half_width_mm > 0, "half_width_mm", half_width_mm, "more than 0");
   Need(max_hidden_mm >= 0, "max_hidden_mm", max_hidden_mm, "0 or more");
 }

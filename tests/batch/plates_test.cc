@@ -89,8 +89,7 @@ TEST(SamplePlates, GapAreaIsWithinItsTolerance) {
   EXPECT_GE(within, 0.9 * static_cast<double>(gaps.told.size()));
 }
 
-// Promised: a rank correlation of 0.85 with the truth, of gap areas 0.95. Blobs (0.846) fall short
-// (docs/validation.md) and are not asserted.
+// Promised: a rank correlation of 0.85 with the truth, of gap areas 0.95.
 TEST(SamplePlates, DefectsAreInTheirTrueOrder) {
   const auto rank = [](const char* feature, const char* truth) {
     const Compared compared = Compare(feature, truth);
@@ -98,11 +97,13 @@ TEST(SamplePlates, DefectsAreInTheirTrueOrder) {
   };
   EXPECT_GE(rank("gap_area_pct", "gap_area_pct"), 0.95);
   EXPECT_GE(rank("scar_length_mm", "scar_length_mm"), 0.85);
+  EXPECT_GE(rank("blob_count_per_cm2", "blobs"), 0.85);
   EXPECT_GE(rank("wall_gap_mean_mm", "ring_gap_mm"), 0.85);
   EXPECT_GE(rank("ridge_um", "ridge_um"), 0.85);
 }
 
-// Promised: scars of 10 mm found, 9 of 10; at most one false scar on 10 coupons.
+// Promised: scars of 10 mm found, 9 of 10; at most one false scar on 10 coupons. A doubtful one
+// counts by its chance: found is a half.
 TEST(SamplePlates, ScarsAreFoundAndNotInvented) {
   const Compared scars = Compare("scar_count", "scar_length_mm");
   double scarred = 0;
@@ -112,7 +113,7 @@ TEST(SamplePlates, ScarsAreFoundAndNotInvented) {
   for (size_t i = 0; i < scars.told.size(); ++i) {
     if (scars.told[i] >= 10) {
       scarred += 1;
-      found += scars.measured[i] > 0 ? 1 : 0;
+      found += scars.measured[i] >= 0.5 ? 1 : 0;
     } else if (scars.told[i] == 0) {
       clean += 1;
       invented += scars.measured[i];
@@ -182,6 +183,15 @@ TEST(SamplePlates, TheSameCouponsHaveTheSameGaps) {
   for (const char* feature :
        {"gap_area_pct", "gaps_per_cm2", "gap_length_mm_per_cm2", "gap_wide_mm",
         "gap_long_mm_per_cm2", "wall_gap_pct", "wall_gap_mm", "wall_gap_mean_mm"}) {
+    EXPECT_LE(LargestDifference(feature, "d2", "d3"), 0.2) << feature;
+  }
+}
+
+// Promised: as above. The area of blobs falls short (docs/validation.md).
+TEST(SamplePlates, TheSameCouponsHaveTheSameScarsAndBlobs) {
+  for (const char* feature :
+       {"scar_length_mm_per_cm2", "scar_length_mm", "scar_count", "blob_count_per_cm2"}) {
+    EXPECT_LE(LargestDifference(feature, "d2", "d7"), 0.1) << feature;
     EXPECT_LE(LargestDifference(feature, "d2", "d3"), 0.2) << feature;
   }
 }

@@ -69,9 +69,9 @@ TEST(WallGaps, MeasureShareAndWidthOfAnOpenSeam) {
   }
 }
 
-// A seam that opens, and one that grows longer, move the columns little by little: at once, it would
-// be 0.2 mm, and 9 % of the seam. From 0.2 to 0.28 of depth it opens, an eighth a step; of a piece,
-// 0.25 mm of 175 a step are open besides, and 1.25 mm are taken for one by fifths.
+// A seam that opens, and one that grows longer, move the columns little by little: at once, it
+// would be 0.2 mm, and 9 % of the seam. From 0.2 to 0.28 of depth it opens, an eighth a step; of a
+// piece, 0.25 mm of 175 a step are open besides, and 1.25 mm are taken for one by fifths.
 TEST(WallGaps, OpenWithoutAStep) {
   const auto largest_steps = [](const auto& patch, int count) {
     double width_step = 0;

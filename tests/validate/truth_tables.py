@@ -94,7 +94,7 @@ def _scars(measured):
     pairs = measured.values(measured.whole(), "scar_count", "scar_length_mm")
     scarred = [count for count, told in pairs if told >= 10]
     clean = [count or 0 for count, told in pairs if told == 0]
-    found = sum(bool(count) for count in scarred)
+    found = sum((count or 0) >= 0.5 for count in scarred)
     return f"{found} of {len(scarred)}", f"{10 * sum(clean) / len(clean):.1f} ({len(clean)})"
 
 

@@ -48,7 +48,7 @@ Pitch and lay: raster coupons, all of which show lines.
 {metrics}
 
 Coupons that did not fail; rank correlations are Spearman's. Ridges: only where lines were found. A
-scar counts as found where the coupon shows any; how much of it is seen is in the rank of lengths.
+scar counts as found from a count of a half; how much of it is seen is in the rank of lengths.
 A coupon is called failed where its `fault` says so.
 
 ## The same coupons again
@@ -82,7 +82,8 @@ a value in one of the two alone.
 
 Why columns go beyond it:
 
-- Counts move in whole steps: one scar is 1.2 spreads, and a blob that fades by half moves its count.
+- One blob is 0.7 spreads of their count: one that is just seen counts in part, and by how much of
+  the surface's own unevenness it stands out, which coding and clipping change by a tenth.
 - The second harmonic is finer than 0.25 mm, where coding and sharpness take most; phase agreement
   and scatter say little where ridges hide the lines (one coupon of d5).
 - Other light (d2, d3) shows slopes and ridges differently: light across the lines shows their flanks,
