@@ -22,8 +22,10 @@ struct LineContrast {
 };
 [[nodiscard]] LineContrast MeasureLineContrast(const FieldSpectrum& spectrum, const Lines& lines);
 
-// How far the tiles' own pitches and lays lie from the field's: root mean squares, weighted by the
-// power, of the peak next to the lines' wave vector in each tile's spectrum.
+// How far the tiles' pitches and lays scatter: standard deviations, weighted by the power, of the
+// centre of power of the nine bins about the lines' wave vector in each tile's spectrum. The centre
+// follows a wave within half a bin by 0.75 to 1 of its shift, is not thrown from peak to peak by
+// noise, and what is no wave of the lines moves it by a bin at most.
 struct LineScatter {
   double pitch_pct = 0;
   double lay_deg = 0;

@@ -44,7 +44,7 @@ Finding Measure(const Surface& surface) {
 
 Metric LinesMetric() {
   return {"lines",
-          2,
+          3,
           {{"pitch_mm", "distance between neighbouring line centres"},
            {"lay_deg", "direction of the lines, counter-clockwise from the coupon's +x"},
            {"line_contrast", "amplitude of the lines' first three harmonics, of mean reflectance"},
