@@ -183,7 +183,7 @@ std::optional<Roughness> MeasureRoughness(const FieldSpectrum& spectrum,
 
 Metric RoughnessMetric() {
   return {"roughness",
-          2,
+          3,
           {{"aperiodic_roughness",
             "root mean square of what is no line, wavelengths 0.2 to 2 mm, of mean reflectance"},
            {"line_power_share",

@@ -12,8 +12,9 @@ struct RoughnessOptions {
   double line_halfwidth_bins =
       2.5;  // of the spots taken out: the Hann window's lobe and a half bin
   // Added to the band's root mean square, in quadrature, where the lines' share is taken of it:
-  // four times what smooth tops show, which are no more regular for being faint.
-  double share_floor = 0.02;
+  // six times what smooth tops show, which are no more regular for being faint, and a quarter of
+  // what is plainly seen.
+  double share_floor = 0.03;
   void Check() const;  // throws BadOption: field, value, rule
 };
 
