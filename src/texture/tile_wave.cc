@@ -18,15 +18,13 @@ constexpr double kTwoPi = 2 * std::numbers::pi;
 class ShiftedSums {
  public:
   ShiftedSums(const FieldSpectrum& spectrum, const Amplitudes& amplitudes, double step, int reach)
-      : reach_(reach) {
-    for (int i = -reach; i <= reach; ++i) {
-      auto& by_x = by_x_.emplace_back();
-      auto& by_y = by_y_.emplace_back();
-      for (std::size_t t = 0; t < amplitudes.size(); ++t) {
-        const cv::Point2d turn = -kTwoPi * step * i * spectrum.tiles[t].centre_mm;
-        by_x.push_back(amplitudes[t] * std::polar(1.0, turn.x));
-        by_y.push_back(std::polar(1.0, turn.y));
-      }
+      : reach_(reach),
+        by_x_(static_cast<std::size_t>(2 * reach + 1), amplitudes),
+        by_y_(by_x_.size(), Amplitudes(amplitudes.size(), 1)) {
+    for (std::size_t t = 0; t < amplitudes.size(); ++t) {
+      const cv::Point2d turn = -kTwoPi * step * spectrum.tiles[t].centre_mm;
+      TurnOnwards(t, turn.x, by_x_);
+      TurnOnwards(t, turn.y, by_y_);
     }
   }
 
@@ -37,6 +35,16 @@ class ShiftedSums {
   }
 
  private:
+  // Turns the t-th value of every shift: by one step after the other, from the shift -reach on.
+  void TurnOnwards(std::size_t t, double step_turn, std::vector<Amplitudes>& by_shift) const {
+    const std::complex<double> step = std::polar(1.0, step_turn);
+    std::complex<double> turn = std::polar(1.0, -reach_ * step_turn);
+    for (Amplitudes& values : by_shift) {
+      values[t] *= turn;
+      turn *= step;
+    }
+  }
+
   int reach_;
   std::vector<Amplitudes> by_x_;  // amplitudes, turned by the shift along x
   std::vector<Amplitudes> by_y_;  // turns by the shift along y
