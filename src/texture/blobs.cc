@@ -16,7 +16,6 @@ namespace {
 constexpr double kSurroundingsMm = 5;  // square over which the surface's own level is averaged
 constexpr double kDarkest = 1;         // clipped at so many deviations below the surroundings
 constexpr double kFlattenMm = 0.7;     // window along the lay whose mean is taken out
-constexpr double kAreaReachMm = 1.8;   // a blob's area lies within
 
 cv::Point Rounded(cv::Point2d p) { return {cvRound(p.x), cvRound(p.y)}; }
 
@@ -45,6 +44,15 @@ cv::Mat NoScar(const TopView& view, std::vector<Track> scars, const BlobOptions&
     cv::polylines(no_scar, points, false, cv::Scalar::all(1 - scar.chance), width);
   }
   return no_scar;
+}
+
+// What is searched, less a rim in which the response reaches over the border: open seams lie there.
+cv::Mat Inner(const TopView& view, double rim_px) {
+  const int side = 2 * static_cast<int>(std::lround(rim_px)) + 1;
+  cv::Mat inner;
+  cv::erode(view.searched, inner, cv::Mat::ones(side, side, CV_8UC1), {-1, -1}, 1,
+            cv::BORDER_CONSTANT, cv::Scalar::all(0));
+  return inner;
 }
 
 // The mean over the searched part of a square about each pixel: coarse, since it is wide.
@@ -241,22 +249,17 @@ ExcessScale MeasureScale(const std::vector<Peak>& peaks, double least) {
   return scale;
 }
 
-// Where the response is above a third of its peak within reach, mm2, whatever the contrast is.
-// Pixels count in part from a tenth to a half of it.
-double AreaOf(const cv::Mat& energy, const ExcessScale& scale, cv::Point peak, double px_per_mm) {
-  constexpr double kFrom = 0.1;
-  constexpr double kTo = 0.5;
-  const int reach = static_cast<int>(kAreaReachMm * px_per_mm);
+// What the response would take if all of it that is nearer than `reach_px` were as high as its
+// peak, mm2: its excess summed, over that of the peak, so that contrast drops out.
+double EquivalentArea(const cv::Mat& energy, const ExcessScale& scale, cv::Point peak,
+                      double reach_px, double px_per_mm) {
   const double highest = scale.Of(std::sqrt(energy.at<float>(peak)));
   const cv::Rect frame({0, 0}, energy.size());
-  double area_px = 0;
-  for (int dy = -reach; dy <= reach; ++dy) {
-    for (int dx = -reach; dx <= reach; ++dx) {
-      const cv::Point p = peak + cv::Point(dx, dy);
-      if (frame.contains(p) && dx * dx + dy * dy <= reach * reach) {
-        const double share = scale.Of(std::sqrt(energy.at<float>(p))) / highest;
-        area_px += std::clamp((share - kFrom) / (kTo - kFrom), 0.0, 1.0);
-      }
+  double area_px = 1;  // the peak
+  for (const cv::Point& offset : Disk(reach_px)) {
+    const cv::Point p = peak + offset;
+    if (frame.contains(p)) {
+      area_px += std::max(scale.Of(std::sqrt(energy.at<float>(p))) / highest, 0.0);
     }
   }
   return area_px / (px_per_mm * px_per_mm);
@@ -285,13 +288,15 @@ std::vector<Blob> FindBlobs(const TopView& view, const std::vector<Track>& scars
     return {};
   }
   const cv::Mat no_scar = NoScar(view, scars, options);
-  const cv::Mat searched = view.searched & (no_scar > 0.5);
+  const double scale_px = options.scale_mm * view.px_per_mm;
+  const cv::Mat searched = Inner(view, 3 * scale_px) & (no_scar > 0.5);
   cv::Mat image = WithoutLines(view);
   if (!scars.empty()) {
     cv::multiply(image, no_scar, image);
   }
-  const cv::Mat energy = Energy(image, searched, options.scale_mm * view.px_per_mm);
-  const std::vector<Peak> peaks = LocalMaxima(energy, options.separation_mm * view.px_per_mm);
+  const cv::Mat energy = Energy(image, searched, scale_px);
+  const double separation_px = options.separation_mm * view.px_per_mm;
+  const std::vector<Peak> peaks = LocalMaxima(energy, separation_px);
   const ExcessScale scale = MeasureScale(peaks, options.min_excess);
   std::vector<Blob> blobs;
   if (scale.unit <= 0) {
@@ -300,7 +305,8 @@ std::vector<Blob> FindBlobs(const TopView& view, const std::vector<Track>& scars
   for (const Peak& peak : peaks) {
     const double excess = scale.Of(peak.height);
     if (excess >= options.min_excess) {
-      blobs.push_back({peak.at, AreaOf(energy, scale, peak.at, view.px_per_mm), excess});
+      blobs.push_back(
+          {peak.at, EquivalentArea(energy, scale, peak.at, separation_px, view.px_per_mm), excess});
     }
   }
   return blobs;

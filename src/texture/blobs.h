@@ -19,7 +19,7 @@ struct BlobOptions {
 
 struct Blob {
   cv::Point2d centre_px;  // in the view
-  double area_mm2 = 0;    // where the response is above a third of its peak
+  double area_mm2 = 0;    // of the response, if all of it were as high as its peak
   double excess = 0;      // of its peak, see FindBlobs
 };
 

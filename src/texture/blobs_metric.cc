@@ -78,7 +78,7 @@ Finding MeasureBlobs(const Surface& surface) {
 
 Metric BlobsMetric() {
   return {"blobs",
-          3,
+          4,
           {{"blob_count_per_cm2", "lumps, by area of top surface"},
            {"blob_area_pct", "share of the top surface that lumps take"}},
           &MeasureBlobs};

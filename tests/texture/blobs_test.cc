@@ -102,6 +102,20 @@ TEST(Blobs, HardlyAnyOnTwentyGoodCoupons) {
   EXPECT_LE(blobs, 4U);
 }
 
+// Open in pieces of 1.5 mm, from the walls' inner side on. Without the rim of 0.6 mm each is found.
+TEST(Blobs, AnOpenSeamIsNone) {
+  for (const double width_mm : {0.3, 0.5}) {
+    Patch patch = GoodLines(14);
+    for (double y_mm = -16; y_mm < 16; y_mm += 4) {
+      const cv::Point2d corner = patch.PixelFromCoupon({-18.7, y_mm});
+      const cv::Rect open(cvRound(corner.x), cvRound(corner.y), cvRound(width_mm * 20), 30);
+      patch.relative(open).setTo(0.2);
+    }
+    const TopView view = MakeTopView(patch, 45, FindTornArea(patch, 45.0));
+    EXPECT_TRUE(FindBlobs(view, {}).empty()) << width_mm;
+  }
+}
+
 TEST(Blobs, AScarIsNone) {
   Patch patch = GoodLines(5);
   DrawTrack({.path_mm = {{-6, -12}, {5, 6}}, .edge = 0.3, .groove = -0.2}, patch);
@@ -183,8 +197,8 @@ TEST(BlobsMetric, FadingLumpsFadeFromTheCount) {
   EXPECT_LT(last, 0.5);
 }
 
-// A third of the peak is reached at the same place whatever the contrast; noise and lines below
-// move it by a fifth at most.
+// Both excesses grow alike with the contrast; noise and lines below move their sum by a fifth at
+// most.
 TEST(BlobsMetric, AreaDoesNotFollowContrast) {
   const double weak = Measured(0.2).second;
   EXPECT_NEAR(Measured(0.4).second, weak, 0.2 * weak);
