@@ -61,7 +61,7 @@ Finding MeasureScars(const Surface& surface) {
 
 Metric ScarsMetric() {
   return {"scars",
-          2,
+          3,
           {{"scar_length_mm_per_cm2", "length of tracks across the lines, by area of top surface"},
            {"scar_length_mm", "length of tracks across the lines, in all"},
            {"scar_count", "tracks across the lines"}},

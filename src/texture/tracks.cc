@@ -173,9 +173,11 @@ class Follower {
     seed.sigmas = sign * Sigmas(seed, options_.follow_length_mm).value_or(0);
     std::vector<Piece> path = FollowOneWay(seed, -1, sign);
     std::reverse(path.begin(), path.end());
+    const size_t at_seed = path.size();
     path.push_back(seed);
     const std::vector<Piece> onwards = FollowOneWay(seed, 1, sign);
     path.insert(path.end(), onwards.begin(), onwards.end());
+    path = StandsOutMost(path, at_seed);
     CutEnds(path);
     Track track;
     for (const Piece& piece : path) {
@@ -185,6 +187,34 @@ class Follower {
       track.path_px.push_back(piece.centre);
     }
     return track;
+  }
+
+  // The part about the seed whose sum stands out most, with a piece more at each end: by chance, a
+  // track is followed into noise, which would dilute it.
+  [[nodiscard]] static std::vector<Piece> StandsOutMost(const std::vector<Piece>& path,
+                                                        size_t at_seed) {
+    std::vector<double> sums{0};  // of what is seen before each piece, and how many
+    std::vector<int> counts{0};
+    for (const Piece& piece : path) {
+      sums.push_back(sums.back() + (piece.seen ? piece.sigmas : 0));
+      counts.push_back(counts.back() + (piece.seen ? 1 : 0));
+    }
+    size_t first = at_seed;
+    size_t end = at_seed + 1;
+    double most = 0;
+    for (size_t i = 0; i <= at_seed; ++i) {
+      for (size_t j = at_seed + 1; j <= path.size(); ++j) {
+        const double sum = (sums[j] - sums[i]) / std::sqrt(counts[j] - counts[i]);
+        if (sum > most) {
+          most = sum;
+          first = i;
+          end = j;
+        }
+      }
+    }
+    const auto from = static_cast<std::ptrdiff_t>(first > 0 ? first - 1 : first);
+    const auto to = static_cast<std::ptrdiff_t>(std::min(end + 1, path.size()));
+    return {path.begin() + from, path.begin() + to};
   }
 
   // The sum along the whole path in units of its spread, without the strongest part that one lump

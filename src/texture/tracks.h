@@ -40,8 +40,8 @@ struct Track {
 // Two sums tell a track from chance, each in units of the spread of such sums: `sigmas` of its
 // strongest piece, and `strength` of its whole path without the 1.6 mm that give most, so that one
 // lump or one short gap is no track. `chance` rises evenly from 0 to 1 as their mean goes from 5.7
-// to 7.1; it is no more than sigmas - min_sigmas. On the sample plates the mean stays below 5
-// without a scar and is above 7.2 of every scar, 4 mm of one beside a hole included.
+// to 7.1; it is no more than sigmas - min_sigmas. On the sample plates the mean stays below 5.5
+// without a scar and is above 7 of every scar, 4 mm of one beside a hole included.
 [[nodiscard]] std::vector<Track> FindTracks(const TopView& view, const TrackOptions& options = {});
 
 }  // namespace laygauge

@@ -83,6 +83,22 @@ TEST(Scars, AGentlyBentTrackIsOne) {
   EXPECT_NEAR(found.tracks[0].length_mm, 16 * kPi / 180 * 80, 2 * kEndMm);
 }
 
+// Short and faint: followed into noise, it would grow by more than a millimetre at each end.
+TEST(Scars, AShortTrackKeepsItsLength) {
+  constexpr int kSeeds = 24;
+  double length_mm = 0;
+  for (std::uint64_t seed = 1; seed <= kSeeds; ++seed) {
+    Patch patch = GoodLines(seed);
+    const cv::Point2d half = OnCircle(2.5, 45 + 80);
+    DrawTrack({.path_mm = {-half, half}, .edge = -0.06, .groove = 0.02}, patch);
+    const Found found = FindOn(patch);
+    ASSERT_FALSE(found.tracks.empty()) << seed;
+    EXPECT_GE(found.tracks[0].chance, 0.5) << seed;
+    length_mm += found.tracks[0].length_mm / kSeeds;
+  }
+  EXPECT_NEAR(length_mm, 5, kEndMm);
+}
+
 TEST(Scars, TwoThatCrossAreTwo) {
   Patch patch = GoodLines(4);
   DrawTrack({.path_mm = {{-6, -12}, {5, 6}}}, patch);
