@@ -18,7 +18,7 @@ from run_program import ROOT, SAMPLES, number, record, score
 PX_PER_MM = 20
 PATCH_PX = 880
 SIDE_MM = 12.0
-PLAIN_PLACE_MM = (-4.0, 5.0)  # between the holes
+PLAIN_PLACE_MM = (-4.0, -5.0)  # between the holes
 OWN_LEVEL = 149  # the coupon's own level in the program's pictures
 STRETCH = 1.7    # about it, so that faint textures show in small pictures
 BORDER_MM = 19.5              # crops stay on the coupon
@@ -33,7 +33,7 @@ EXAMPLES = [
     ("ridges", "d1", "ridge_um", "ridge"),
     ("wall-gaps", "d1", "wall_gap_mean_mm", "wall_gap"),
     ("scars", "d1", "scar_length_mm", "scar"),
-    ("blobs", "d1", "blob_count_per_cm2", "blob"),
+    ("blobs", "d2", "blob_count_per_cm2", "blob"),
     ("failure", "d2", "failure_area_pct", "failure"),
     ("index-roughness", "d1", "roughness", None),
     ("index-defects", "d1", "defects", None),
@@ -42,22 +42,26 @@ FIRST_RESULT = ("d1", "B2")  # gaps, scars and wall gaps on one coupon
 
 
 def _fullest_place(marks):
-    """Centre of the crop that holds the most of the marks' points."""
+    """Centre of the crop that holds the most of the marks' points, as near the middle of them as
+    the coupon allows."""
     points = [point for mark in marks for point in mark["path_mm"]]
     limit = BORDER_MM - SIDE_MM / 2
     steps = [-limit + 1.5 * i for i in range(int(2 * limit / 1.5) + 1)]
 
     def held(centre):
-        return sum(max(abs(x - centre[0]), abs(y - centre[1])) < SIDE_MM / 2 for x, y in points)
+        return [(x, y) for x, y in points
+                if max(abs(x - centre[0]), abs(y - centre[1])) < SIDE_MM / 2]
 
-    return max(((x, y) for x in steps for y in steps),
-               key=lambda centre: (held(centre), -math.hypot(*centre)))
+    best = max(((x, y) for x in steps for y in steps),
+               key=lambda centre: (len(held(centre)), -math.hypot(*centre)))
+    middle = [(min(axis) + max(axis)) / 2 for axis in zip(*held(best))]
+    return [max(-limit, min(limit, value)) for value in middle]
 
 
 def _crop(path, centre_mm):
-    """Coupon frame: x right, y up; pixel (439.5, 439.5) is the origin."""
+    """Coupon frame: x right, y down; pixel (439.5, 439.5) is the origin."""
     column = PATCH_PX / 2 + centre_mm[0] * PX_PER_MM
-    row = PATCH_PX / 2 - centre_mm[1] * PX_PER_MM
+    row = PATCH_PX / 2 + centre_mm[1] * PX_PER_MM
     half = SIDE_MM * PX_PER_MM / 2
     crop = Image.open(path).convert("RGB").crop(
         [round(v) for v in (column - half, row - half, column + half, row + half)])

@@ -85,7 +85,7 @@ Why columns go beyond it:
 - One blob is 0.7 spreads of their count: one that is just seen counts in part, and by how much of
   the surface's own unevenness it stands out, which coding and clipping change by a tenth.
 - The second harmonic is finer than 0.25 mm, where coding and sharpness take most; phase agreement
-  and scatter say little where ridges hide the lines (one coupon of d5).
+  and scatter say little where the lines hold less than a fifth of the power (A1 of d2, d5 and d7).
 - Other light (d2, d3) shows slopes and ridges differently: light across the lines shows their flanks,
   light along them hides them. No processing of one photo brings back what the light did not show;
   scores hold still since they rest on gaps, scars and failure before all.
