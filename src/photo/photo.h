@@ -23,9 +23,9 @@ struct CameraTags {
 // A decoded photograph, upright. Pixel centres are at whole numbers (OpenCV's rule), here and
 // everywhere in this program.
 struct Photo {
-  std::string file;  // as named by the caller, for messages
-  std::string stem;  // the file's name without folder and extension
-  cv::Mat encoded;   // CV_8UC1 or CV_16UC1: luma, still encoded by the sRGB curve
+  std::string file;                    // as named by the caller, for messages
+  std::string stem;                    // the file's name without folder and extension
+  cv::Mat encoded;                     // CV_8UC1 or CV_16UC1: luma, still encoded by the sRGB curve
   std::optional<double> jpeg_quality;  // 1 to 100, as JpegQuality tells it; none: another format
   CameraTags tags;
 
