@@ -1,7 +1,8 @@
 #include "base/memory.h"
 
-#include <cstdint>
+#include <cstddef>
 #include <cstdlib>
+#include <memory>
 
 #ifdef __GLIBC__
 #include <malloc.h>
@@ -22,12 +23,15 @@ void KeepFreedMemory() {
   mallopt(M_TOP_PAD, kRoom);
   // The heap grows by the room when it first must. Volatile, or the compiler leaves both calls out.
   void* volatile first = std::malloc(kRoom / 8);
-  const auto begin = reinterpret_cast<std::uintptr_t>(first);
+  constexpr std::size_t kPage = 2 << 20;
+  void* from = first;
+  std::size_t bytes = kRoom;
+  std::align(kPage, kPage, from, bytes);
+  const auto* end = static_cast<char*>(sbrk(0));
+  // The memory may have come from elsewhere than the heap.
+  if (from < end)
+    madvise(from, static_cast<std::size_t>(end - static_cast<char*>(from)), MADV_HUGEPAGE);
   std::free(first);
-  constexpr std::uintptr_t kPage = 2 << 20;
-  const std::uintptr_t from = (begin + kPage - 1) / kPage * kPage;
-  madvise(reinterpret_cast<void*>(from), reinterpret_cast<std::uintptr_t>(sbrk(0)) - from,
-          MADV_HUGEPAGE);
 #endif
 }
 

@@ -269,9 +269,10 @@ CooccurrenceFeatures DescribeCooccurrence(const CooccurrenceMatrix& matrix) {
 cv::Mat QuantiseRelative(const cv::Mat& relative, const CooccurrenceOptions& options) {
   options.Check();
   const double scale = options.steps_per_level / options.level_width;
+  const int middle = (options.Steps() - 1) / 2;
   cv::Mat quantised;
   // convertTo rounds and saturates at 0: the coupon's own level becomes the middle step.
-  relative.convertTo(quantised, CV_8UC1, scale, (options.Steps() - 1) / 2 - scale);
+  relative.convertTo(quantised, CV_8UC1, scale, middle - scale);
   return cv::min(quantised, options.Steps() - 1);
 }
 

@@ -8,9 +8,7 @@ namespace laygauge {
 
 // A patch at about 10 px/mm, for what is looked for on the whole top: means of squares of pixels.
 struct ReducedPatch {
-  // Not explicit: a patch may be given for it, to be reduced once more.
-  ReducedPatch(
-      const Patch& patch);  // NOLINT(google-explicit-constructor,hicpp-explicit-conversions)
+  explicit ReducedPatch(const Patch& patch);
 
   cv::Mat relative;  // CV_32FC1
   cv::Mat regions;   // CV_8UC1: Region, of a square's first pixel

@@ -31,7 +31,8 @@ Patch GoodLines(std::uint64_t seed) {
 constexpr double kHalf = 4.6;
 
 std::vector<cv::Point2d> FindOn(const Patch& patch) {
-  const TopView view = MakeTopView(patch, 45, FindTornArea(patch, 45.0));
+  const TopView view =
+      MakeTopView(ReducedPatch(patch), 45, FindTornArea(ReducedPatch(patch), 45.0));
   std::vector<cv::Point2d> centres;
   for (const Blob& blob : FindBlobs(view, FindTracks(view))) {
     if (blob.excess < kHalf) continue;
@@ -111,7 +112,8 @@ TEST(Blobs, AnOpenSeamIsNone) {
       const cv::Rect open(cvRound(corner.x), cvRound(corner.y), cvRound(width_mm * 20), 30);
       patch.relative(open).setTo(0.2);
     }
-    const TopView view = MakeTopView(patch, 45, FindTornArea(patch, 45.0));
+    const TopView view =
+        MakeTopView(ReducedPatch(patch), 45, FindTornArea(ReducedPatch(patch), 45.0));
     EXPECT_TRUE(FindBlobs(view, {}).empty()) << width_mm;
   }
 }
@@ -135,7 +137,8 @@ TEST(Blobs, WhatLiesOffTheCouponIsNotRead) {
 
 TEST(Blobs, TheViewIsNotChanged) {
   const Patch patch = GoodLines(7);
-  const TopView view = MakeTopView(patch, 45, FindTornArea(patch, 45.0));
+  const TopView view =
+      MakeTopView(ReducedPatch(patch), 45, FindTornArea(ReducedPatch(patch), 45.0));
   const cv::Mat before = view.relative.clone();
   (void)FindBlobs(view, {});
   EXPECT_EQ(cv::norm(view.relative, before, cv::NORM_INF), 0);
@@ -186,7 +189,7 @@ std::pair<double, double> Measured(double lit) {
 // 30 %: a step of 2 % takes 0.07 of each of five, 0.35; as much again where the
 // surface's own heights, by which excess counts, change.
 TEST(BlobsMetric, FadingLumpsFadeFromTheCount) {
-  const double area_cm2 = MakeTopView(GoodLines(10), 45, {}).searched_cm2;
+  const double area_cm2 = MakeTopView(ReducedPatch(GoodLines(10)), 45, {}).searched_cm2;
   double last = Measured(0.12).first * area_cm2;
   EXPECT_GT(last, 4.9);
   for (double lit = 0.12; lit > 0.02; lit *= 0.98) {

@@ -41,7 +41,8 @@ struct Found {
 
 Found FindOn(const Patch& patch, double lay_deg = 45) {
   Found found;
-  found.view = MakeTopView(patch, lay_deg, FindTornArea(patch, lay_deg));
+  found.view =
+      MakeTopView(ReducedPatch(patch), lay_deg, FindTornArea(ReducedPatch(patch), lay_deg));
   found.tracks = FindTracks(found.view);
   return found;
 }

@@ -52,7 +52,7 @@ TEST(TornArea, AreaOfTheTurnedLayerIsRight) {
     LinesToRender below = GoodLines(2);
     below.lay_deg = turned_lay;
     ReplaceDisk({2, 5}, 6, RenderLines(below), patch);
-    const TornArea area = FindTornArea(patch, 45.0);
+    const TornArea area = FindTornArea(ReducedPatch(patch), 45.0);
     const double want = 100 * std::numbers::pi * 36 / FieldMm2(patch);
     // The window of 2.4 mm sees both lays at the border: a layer turned by 90 degrees is told half
     // way, one turned by 40 only where three quarters of the window show it, 0.6 mm inside; the
@@ -74,7 +74,7 @@ TEST(TornArea, LinesThatAreGoneAreFound) {
   smooth.first = 0;
   smooth.second = 0;
   ReplaceDisk({2, 5}, 6, RenderLines(smooth), patch);
-  const TornArea area = FindTornArea(patch, 45.0);
+  const TornArea area = FindTornArea(ReducedPatch(patch), 45.0);
   // A cell certainly counts where both of its windows, 2.4 mm to each side, hold no lines at all.
   EXPECT_LT(area.area_pct, 100 * std::numbers::pi * 36 / FieldMm2(patch));
   EXPECT_GT(area.area_pct, 100 * std::numbers::pi * std::pow(6 - 2.4, 2) / FieldMm2(patch));
@@ -88,7 +88,7 @@ TEST(TornArea, NoneOnTwentyGoodCoupons) {
     Patch patch = RenderLines(lines);
     DrawChannels(40, 0.42, 45, seed, patch);
     DrawTrack({.path_mm = {{-15, -5}, {12, 9}}}, patch);
-    EXPECT_EQ(FindTornArea(patch, 45.0).area_pct, 0) << seed;
+    EXPECT_EQ(FindTornArea(ReducedPatch(patch), 45.0).area_pct, 0) << seed;
   }
 }
 
@@ -98,8 +98,8 @@ TEST(TornArea, NoneWhereNoLinesAreAnywhere) {
     ironed.first = 0;
     ironed.second = 0;
     const Patch patch = RenderLines(ironed);
-    EXPECT_EQ(FindTornArea(patch, std::nullopt).area_pct, 0) << seed;
-    EXPECT_EQ(FindTornArea(patch, 45.0).area_pct, 0) << seed;
+    EXPECT_EQ(FindTornArea(ReducedPatch(patch), std::nullopt).area_pct, 0) << seed;
+    EXPECT_EQ(FindTornArea(ReducedPatch(patch), 45.0).area_pct, 0) << seed;
   }
 }
 
@@ -114,12 +114,12 @@ TEST(TornArea, FaintTexturesAreNotTorn) {
   for (const std::optional<double> lay_deg : {std::optional(45.0), std::optional<double>()}) {
     Patch patch = RenderLines(faint);
     ReplaceDisk({2, 5}, 6, RenderLines(turned), patch);
-    EXPECT_EQ(FindTornArea(patch, lay_deg).area_pct, 0);
+    EXPECT_EQ(FindTornArea(ReducedPatch(patch), lay_deg).area_pct, 0);
     // The same turn of a texture that is seen is an area of 36 pi mm2.
     faint.first = turned.first = 0.1;
     patch = RenderLines(faint);
     ReplaceDisk({2, 5}, 6, RenderLines(turned), patch);
-    EXPECT_TRUE(FindTornArea(patch, lay_deg).Failed());
+    EXPECT_TRUE(FindTornArea(ReducedPatch(patch), lay_deg).Failed());
     faint.first = turned.first = 0.01;
   }
 }
@@ -127,10 +127,10 @@ TEST(TornArea, FaintTexturesAreNotTorn) {
 TEST(TornArea, WhatLiesOffTheCouponIsNotRead) {
   Patch patch = RenderLines(GoodLines(1));
   ReplaceDisk({2, 5}, 6, RenderLines({.lay_deg = 135}), patch);
-  const double before = FindTornArea(patch, 45.0).area_pct;
+  const double before = FindTornArea(ReducedPatch(patch), 45.0).area_pct;
   patch.relative.setTo(std::numeric_limits<float>::quiet_NaN(),
                        patch.regions == static_cast<int>(Region::kOff));
-  EXPECT_EQ(FindTornArea(patch, 45.0).area_pct, before);
+  EXPECT_EQ(FindTornArea(ReducedPatch(patch), 45.0).area_pct, before);
 }
 
 TEST(TornArea, OptionsAreChecked) {
