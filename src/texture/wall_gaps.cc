@@ -126,6 +126,18 @@ double GrooveDepth(const Station& station, const Depths& depths, double wall_mm)
   return 1 - sum / 3 / std::max(level, 1e-6);
 }
 
+// The darkest place from `first` to `last` that is darker than its neighbours; -1: there is none.
+// What only grows darker towards the field is the flank of a channel along the wall.
+int DarkestValley(const std::vector<double>& dark, int first, int last) {
+  int darkest = -1;
+  for (int i = first; i <= last; ++i) {
+    const auto at = static_cast<std::size_t>(i);
+    if (dark[at] < dark[at - 1] || dark[at] < dark[at + 1]) continue;
+    if (darkest < 0 || dark[at] > dark[static_cast<std::size_t>(darkest)]) darkest = i;
+  }
+  return darkest;
+}
+
 // Where the darkness falls to `half` from `peak` on, in samples; `step` is 1 or -1.
 double Crossing(const std::vector<double>& dark, int peak, int step, double half) {
   const int end = step > 0 ? static_cast<int>(dark.size()) : -1;
@@ -173,8 +185,8 @@ void JudgeStation(Station* station, const Depths& depths, double wall_mm, double
   }
   const int first = depths.At(wall_mm - kSearchMm / 3) - from;
   const int last = depths.At(wall_mm + kSearchMm) - from;
-  const auto peak = static_cast<int>(
-      std::max_element(dark.begin() + first, dark.begin() + last + 1) - dark.begin());
+  const int peak = DarkestValley(dark, first, last);
+  if (peak < 0) return;
   const double depth = dark[static_cast<std::size_t>(peak)];
   if (!(depth > 0)) {
     return;
@@ -356,7 +368,7 @@ Finding MeasureWallGaps(const Surface& surface) {
 
 Metric WallGapsMetric() {
   return {"wall_gaps",
-          3,
+          4,
           {{"wall_gap_pct", "share of the seam between field and walls that is open"},
            {"wall_gap_mm", "mean width of the open parts, less where few are open"},
            {"wall_gap_mean_mm", "width averaged over the whole seam"}},

@@ -100,6 +100,26 @@ TEST(WallGaps, AClosedSeamHasNone) {
   EXPECT_TRUE(walls.marks.empty());
 }
 
+// Lines along two edges: the valley next to the wall is the seam, the others are channels.
+TEST(WallGaps, OpenChannelsAlongAnEdgeAreNoSeam) {
+  constexpr double kSeamMm = 19.1;
+  for (const double lay : {0.0, 90.0}) {
+    for (const int lines : {46, 50, 54}) {
+      const double pitch_mm = kSeamMm / lines;
+      const Patch patch = RenderChannels(
+          {.pitch_mm = pitch_mm, .lay_deg = lay, .darkness_mm = [&](int channel, double) {
+             return std::abs(channel) < lines ? 0.08 : 0.0;
+           }});
+      // A channel that touches a hole's wall is a seam for as long as it does.
+      for (const Mark& mark : Measure(patch).marks) {
+        for (const cv::Point2f& p : mark.path_mm) {
+          EXPECT_LT(std::max(std::abs(p.x), std::abs(p.y)), 18) << lay << " " << pitch_mm;
+        }
+      }
+    }
+  }
+}
+
 TEST(WallGaps, ShortDarkSpotsAreTheEndsOfLines) {
   EXPECT_EQ(*Measure(WithSeam(0.6, 0.08, -9.6)).features[kShare].value, 0);  // 0.4 mm
 }
