@@ -130,7 +130,8 @@ double GrooveDepth(const Station& station, const Depths& depths, double wall_mm)
 // What only grows darker towards the field is the flank of a channel along the wall.
 int DarkestValley(const std::vector<double>& dark, int first, int last) {
   int darkest = -1;
-  for (int i = first; i <= last; ++i) {
+  // A narrow wall leaves no neighbour outside.
+  for (int i = std::max(first, 1); i <= last; ++i) {
     const auto at = static_cast<std::size_t>(i);
     if (dark[at] < dark[at - 1] || dark[at] < dark[at + 1]) continue;
     if (darkest < 0 || dark[at] > dark[static_cast<std::size_t>(darkest)]) darkest = i;
