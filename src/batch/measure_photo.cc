@@ -98,8 +98,7 @@ Expected<std::string> CheckCoding(const Photo& photo, const MeasurePhotoOptions&
   }
   return fmt::format(
       "{}: saved as JPEG of quality {:.0f}, which weakens fine lines; copy the camera's own file, "
-      "of "
-      "quality 85 or more",
+      "of quality 85 or more",
       photo.file, *photo.jpeg_quality);
 }
 

@@ -9,6 +9,7 @@
 #include <optional>
 
 #include "base/error.h"
+#include "texture/structuring_element.h"
 
 namespace laygauge {
 namespace {
@@ -48,10 +49,9 @@ cv::Mat NoScar(const TopView& view, std::vector<Track> scars, const BlobOptions&
 
 // What is searched, less a rim in which the response reaches over the border: open seams lie there.
 cv::Mat Inner(const TopView& view, double rim_px) {
-  const int side = 2 * static_cast<int>(std::lround(rim_px)) + 1;
   cv::Mat inner;
-  cv::erode(view.searched, inner, cv::Mat::ones(side, side, CV_8UC1), {-1, -1}, 1,
-            cv::BORDER_CONSTANT, cv::Scalar::all(0));
+  cv::erode(view.searched, inner, Square(rim_px), {-1, -1}, 1, cv::BORDER_CONSTANT,
+            cv::Scalar::all(0));
   return inner;
 }
 
@@ -149,7 +149,7 @@ cv::Mat Energy(const cv::Mat& image, const cv::Mat& searched, double scale_px) {
 }
 
 // Offsets of the pixels within `radius`, nearest first.
-std::vector<cv::Point> Disk(double radius) {
+std::vector<cv::Point> OffsetsWithin(double radius) {
   const int reach = static_cast<int>(radius);
   std::vector<cv::Point> offsets;
   for (int dy = -reach; dy <= reach; ++dy) {
@@ -177,7 +177,7 @@ std::vector<Peak> LocalMaxima(const cv::Mat& energy, double separation_px) {
   cv::Mat framed;
   cv::copyMakeBorder(energy, framed, reach, reach, reach, reach, cv::BORDER_CONSTANT);
   std::vector<std::ptrdiff_t> near;
-  for (const cv::Point& offset : Disk(separation_px)) {
+  for (const cv::Point& offset : OffsetsWithin(separation_px)) {
     near.push_back(offset.y * static_cast<std::ptrdiff_t>(framed.step1()) + offset.x);
   }
   cv::Mat most_beside;
@@ -256,7 +256,7 @@ double EquivalentArea(const cv::Mat& energy, const ExcessScale& scale, cv::Point
   const double highest = scale.Of(std::sqrt(energy.at<float>(peak)));
   const cv::Rect frame({0, 0}, energy.size());
   double area_px = 1;  // the peak
-  for (const cv::Point& offset : Disk(reach_px)) {
+  for (const cv::Point& offset : OffsetsWithin(reach_px)) {
     const cv::Point p = peak + offset;
     if (frame.contains(p)) {
       area_px += std::max(scale.Of(std::sqrt(energy.at<float>(p))) / highest, 0.0);

@@ -1,6 +1,5 @@
 #include "texture/line_contrast.h"
 
-#include <algorithm>
 #include <cmath>
 #include <complex>
 #include <numbers>
@@ -21,22 +20,17 @@ struct AgreementOfTiles {
 };
 
 AgreementOfTiles MeasureAgreement(const Amplitudes& amplitudes) {
-  std::complex<double> sum = 0;
-  double sum_abs = 0;
-  for (const auto& tile : amplitudes) {
-    sum += tile;
-    sum_abs += std::abs(tile);
-  }
-  if (!(sum_abs > 0)) {
+  const double value = Agreement(amplitudes);
+  if (!(value > 0)) {
     return {};
   }
-  const double value = Agreement(amplitudes);
+  const auto sum = std::accumulate(amplitudes.begin(), amplitudes.end(), std::complex<double>());
   double residuals = 0;
   for (const auto& tile : amplitudes) {
-    const double projected = (tile * std::conj(sum)).real() / std::max(std::abs(sum), 1e-300);
+    const double projected = (tile * std::conj(sum)).real() / std::abs(sum);
     residuals += std::pow(projected - value * std::abs(tile), 2);
   }
-  return {value, std::sqrt(residuals) / sum_abs};
+  return {value, std::sqrt(residuals) * value / std::abs(sum)};
 }
 
 }  // namespace

@@ -33,8 +33,8 @@ struct OpenChannels {
   std::vector<std::vector<OpenValley>> plain;
 };
 
-inline constexpr double kMinChannelMm =
-    1.25;  // a scar or a grain of noise is shorter along the lay
+// A scar or a grain of noise is shorter along the lay.
+inline constexpr double kMinChannelMm = 1.25;
 inline constexpr double kLongChannelMm = 5;
 inline constexpr int kWidestOf = 10;
 

@@ -7,23 +7,13 @@
 #include <vector>
 
 #include "base/vectorize.h"
+#include "texture/structuring_element.h"
 
 namespace laygauge {
 namespace {
 
 constexpr double kWallSeamMm = 0.5;
 constexpr double kTornSeamMm = 2;
-
-cv::Mat Disk(double radius) {
-  const int side = 2 * static_cast<int>(std::lround(radius)) + 1;
-  return cv::getStructuringElement(cv::MORPH_ELLIPSE, {side, side});
-}
-
-// Quicker than a disk, for a seam along walls.
-cv::Mat Square(double radius) {
-  const int side = 2 * static_cast<int>(std::lround(radius)) + 1;
-  return cv::Mat::ones(side, side, CV_8UC1);
-}
 
 // CV_8UC1, 255 where the patch is searched.
 cv::Mat SearchedPart(const ReducedPatch& patch, const TornArea& torn) {

@@ -10,6 +10,7 @@
 
 #include "base/error.h"
 #include "base/vectorize.h"
+#include "texture/structuring_element.h"
 
 namespace laygauge {
 namespace {
@@ -19,17 +20,6 @@ constexpr double kSeamMm = 0.4;  // next to a wall its seam shows, not the lines
 constexpr int kPixelsPerCell = 2;
 
 int OddCells(double cells) { return 2 * static_cast<int>(std::lround(cells / 2)) + 1; }
-
-cv::Mat Disk(double radius) {
-  const int side = 2 * static_cast<int>(std::lround(radius)) + 1;
-  return cv::getStructuringElement(cv::MORPH_ELLIPSE, {side, side});
-}
-
-// Quicker than a disk, for a seam along walls.
-cv::Mat Square(double radius) {
-  const int side = 2 * static_cast<int>(std::lround(radius)) + 1;
-  return cv::Mat::ones(side, side, CV_8UC1);
-}
 
 // The coupon's top without its walls, smoothed for gradients.
 struct Top {
