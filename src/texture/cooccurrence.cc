@@ -93,6 +93,7 @@ double SplineWeight(double distance) {
 
 // Features of the whole and, for their standard deviations, of stripes of rows.
 struct Direction {
+  double pairs = 0;  // 0: there are no values
   Values whole{};
   std::vector<Values> parts;
 };
@@ -115,6 +116,7 @@ Direction MeasureDirection(const cv::Mat& marked, const CooccurrenceOptions& opt
       direction.parts.push_back(describe(part));
     }
   }
+  direction.pairs = sum.pairs;
   if (sum.pairs > 0) {
     direction.whole = describe(sum);
   }
@@ -148,14 +150,17 @@ Finding Measure(const Surface& surface) {
   const AlignedField& field = surface.aligned_half;
   const int offset = static_cast<int>(std::lround(options.offset_mm * field.px_per_mm));
   const cv::Mat mask = field.regions == static_cast<int>(Region::kField);
-  if (field.relative.empty() || cv::countNonZero(mask) == 0) {
-    const Feature none{std::nullopt, std::nullopt, "the coupon has no field"};
-    return {std::vector<Feature>(3 * kFeatures, none), {}};
-  }
+  const auto none = [](const char* reason) {
+    return Finding{std::vector<Feature>(3 * kFeatures, {std::nullopt, std::nullopt, reason}), {}};
+  };
+  if (field.relative.empty() || cv::countNonZero(mask) == 0) return none("the coupon has no field");
   const cv::Mat marked =
       MarkOutside(QuantiseRelative(LevelledField(field, mask), options), mask, options.Steps());
   const Direction along = MeasureDirection(marked, options, 0, offset);
   const Direction across = MeasureDirection(marked, options, offset, 0);
+  if (along.pairs == 0 || across.pairs == 0) {
+    return none("the field is too small for pairs of pixels 0.2 mm apart");
+  }
   const Values ratios = Ratios(across.whole, along.whole);
   std::vector<Values> ratio_parts;
   for (std::size_t s = 0; s < std::min(along.parts.size(), across.parts.size()); ++s) {

@@ -309,5 +309,19 @@ TEST(CooccurrenceMetric, IgnoresWhatIsOffTheField) {
   }
 }
 
+// A strip of field 0.1 mm wide holds no pair 0.2 mm apart across it.
+TEST(Cooccurrence, AFieldWithoutPairsHasNoValues) {
+  Patch patch = RenderLines({.pitch_mm = 0.5, .lay_deg = 0, .first = 0.3});
+  cv::Mat field = patch.regions == static_cast<int>(Region::kField);
+  patch.regions.setTo(static_cast<int>(Region::kMargin), field);
+  patch.regions(cv::Rect(100, 440, 600, 2)).setTo(static_cast<int>(Region::kField));
+  const CouponDescription coupon = SquareCoupon();
+  const Finding finding = CooccurrenceMetric().measure(MakeSurface(patch, coupon));
+  for (const Feature& feature : finding.features) {
+    EXPECT_FALSE(feature.value.has_value());
+    EXPECT_FALSE(feature.reason.empty());
+  }
+}
+
 }  // namespace
 }  // namespace laygauge
